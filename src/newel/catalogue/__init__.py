@@ -1,0 +1,1 @@
+"""Which methods, controllers and sinks there are."""

@@ -1,0 +1,1 @@
+"""Small models, addressed on the command line as `example:name`."""

@@ -1,0 +1,1 @@
+"""The guides: Markdown as package data, shown by `newel guide`."""

@@ -1,0 +1,1 @@
+"""Properties of a method, each defined once as data: name, function, unit, source."""

@@ -1,0 +1,1 @@
+"""Rules that produce tableaux, one file a rule."""

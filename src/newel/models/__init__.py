@@ -1,0 +1,1 @@
+"""What is marched: the physics of a simulation."""

@@ -1,0 +1,1 @@
+"""Where a march goes: the run, sinks, progress."""

@@ -1,0 +1,1 @@
+"""The sinks that ship with newel, one file a kind."""

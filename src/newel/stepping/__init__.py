@@ -1,0 +1,1 @@
+"""How one step is made, judged and filled in."""

@@ -1,0 +1,1 @@
+"""Output between the ends of a step."""

@@ -1,0 +1,1 @@
+"""Breaks and events, located."""

@@ -1,0 +1,1 @@
+"""The tableau files that ship with newel: data only, one TOML file a method."""
