@@ -1,0 +1,1 @@
+"""Checks written a second time from the textbook formulas, sharing no code with newel itself."""
