@@ -1,0 +1,367 @@
+"""Tableau files: one method a file, in TOML, with its numbers as texts.
+
+`tableaux/README.md` documents the format. Reading and writing round-trip exactly, printed texts included.
+"""
+
+from __future__ import annotations
+
+import os
+import re
+import secrets
+import stat
+from collections.abc import Iterable, Mapping
+from difflib import get_close_matches
+from pathlib import Path
+from typing import Any
+
+from newel.errors import BadTableau, OutputExists, OutputFailed
+from newel.methods.digits import shown
+from newel.methods.tableau import Digits, Notes, Row, Tableau
+
+__all__ = ["MOST_BYTES", "SCHEMA", "format_tableau", "load_tableau", "parse_tableau", "write_tableau"]
+
+SCHEMA = "newel-tableau/1"
+MOST_BYTES = 2 * 1024 * 1024
+
+_REQUIRED = ("schema", "slug", "name", "source", "numbers", "order", "matrix", "weights")
+_KNOWN = {
+    "": (*_REQUIRED[:3], "also_called", "authors", "year", *_REQUIRED[3:6], "nodes", *_REQUIRED[6:], "digits")
+    + ("embedded", "continuous", "notes"),
+    "embedded": ("order", "weights"),
+    "continuous": ("order", "weights"),
+    "notes": ("strengths", "weaknesses", "known_failures", "remarks"),
+}
+_WRITTEN_FOR = {
+    "order": "the claimed order of the weights: order = 4",
+    "matrix": 'one row a stage, the first is empty: matrix = [[], ["1/2"]]',
+    "weights": 'one a stage: weights = ["0", "1"]',
+    "source": 'where the numbers stand, as a citation: source = "…"',
+    "numbers": 'how they reached the file: numbers = "published", "derived" or "from memory"',
+}
+
+
+def load_tableau(path: str | os.PathLike[str]) -> Tableau:
+    """Read one tableau file. What it claims is not proved here.
+
+    Args:
+        path: a file of at most 2 MiB that ends in `.toml` and is named after the slug in it.
+
+    Returns:
+        The tableau; its `origin` is the path.
+
+    Raises:
+        BadTableau: the file cannot be read or breaks a rule of the format; the text names file, key, value,
+            and what is allowed.
+
+    >>> load_tableau("plant.py")
+    Traceback (most recent call last):
+      ...
+    newel.errors.BadTableau: plant.py is a model, not a tableau. For a model: newel examine plant.py
+    """
+    place = Path(path)
+    file = str(place)
+    if place.suffix == ".py":
+        raise _Other(f"{file} is a model, not a tableau. For a model: newel examine {file}", file)
+    text = _read(place, file)
+    tableau = parse_tableau(text, file=file)
+    if tableau.slug != place.stem:
+        raise BadTableau(
+            f"{tableau.slug!r} is not the file's name\n"
+            f"  Name the file {tableau.slug}.toml, or write slug = {_quoted(place.stem)}.",
+            file=file,
+            key="slug",
+        )
+    return tableau
+
+
+class _Other(BadTableau):
+    """Not a tableau file at all: the text is a sentence and needs no file before it."""
+
+    def __init__(self, sentence: str, file: str) -> None:
+        super().__init__(sentence)
+        self.file = file
+
+
+def _read(place: Path, file: str) -> str:
+    try:
+        status = place.stat()
+    except FileNotFoundError:
+        near = get_close_matches(place.name, _neighbours(place.parent), 1, 0.6)
+        hint = f"\n  Near it: {place.parent / near[0]}" if near else ""
+        raise _Other(f"{file}: there is no such file{hint}", file) from None
+    except (OSError, ValueError) as error:
+        raise BadTableau(f"cannot be read: {_why(error)}", file=file) from None
+    if stat.S_ISDIR(status.st_mode):
+        raise BadTableau("is a folder, not a file; name one of the .toml files in it", file=file)
+    if not stat.S_ISREG(status.st_mode):
+        raise BadTableau("is a device or pipe, not a file", file=file)
+    if place.suffix != ".toml":
+        raise BadTableau(f"ends in {place.suffix or 'nothing'}; a tableau file ends in .toml", file=file)
+    if status.st_size > MOST_BYTES:
+        raise BadTableau(f"{status.st_size:,} bytes; a tableau file has at most {MOST_BYTES:,}", file=file)
+    try:
+        with place.open("rb") as stream:
+            data = stream.read(MOST_BYTES + 1)
+        return data.decode("utf-8")
+    except UnicodeDecodeError as error:
+        line = data.count(b"\n", 0, error.start) + 1
+        raise BadTableau(
+            f"line {line}: byte {data[error.start]:#04x} is not UTF-8; save the file as UTF-8", file=file
+        ) from None
+    except OSError as error:
+        raise BadTableau(f"cannot be read: {_why(error)}", file=file) from None
+
+
+def _neighbours(folder: Path) -> list[str]:
+    try:
+        return sorted(entry.name for entry in folder.iterdir() if entry.suffix == ".toml")
+    except OSError:
+        return []
+
+
+def _why(error: Exception) -> str:
+    return str(getattr(error, "strerror", None) or error)
+
+
+def parse_tableau(text: str, file: str = "tableau") -> Tableau:
+    """Read a tableau from the text of a file.
+
+    Args:
+        text: TOML; a byte-order mark at its start is passed over.
+        file: the name that errors give, and the tableau's `origin`.
+
+    Raises:
+        BadTableau: the text breaks a rule of the format; `file` and `key` say where.
+
+    >>> parse_tableau('schema = "newel-tableau/2"', file="mine.toml")
+    Traceback (most recent call last):
+      ...
+    newel.errors.BadTableau: mine.toml: schema: 'newel-tableau/2'; this newel reads "newel-tableau/1"
+    """
+    try:
+        data = _toml(text)
+        _check_keys(data)
+        embedded, continuous = data.get("embedded", {}), data.get("continuous", {})
+        return Tableau(
+            data["slug"],
+            order=data["order"],
+            matrix=_strings(data["matrix"], "matrix"),
+            weights=_strings(data["weights"], "weights"),
+            nodes=_strings(data.get("nodes"), "nodes"),
+            embedded_weights=_strings(embedded.get("weights"), "embedded.weights"),
+            embedded_order=embedded.get("order"),
+            continuous_weights=_strings(continuous.get("weights"), "continuous.weights"),
+            continuous_order=continuous.get("order"),
+            name=data["name"],
+            also_called=data.get("also_called", ()),
+            authors=data.get("authors", ()),
+            year=data.get("year"),
+            source=data["source"],
+            numbers=data["numbers"],
+            digits=data.get("digits"),
+            notes=Notes(**data.get("notes", {})),
+            origin=file,
+        )
+    except BadTableau as error:
+        raise BadTableau(error.reason, file=file, key=error.key) from None
+
+
+def _toml(text: str) -> dict[str, Any]:
+    import tomllib
+
+    if len(text) > MOST_BYTES:
+        raise BadTableau(f"{len(text):,} characters; a tableau file has at most {MOST_BYTES:,} bytes")
+    text = text.removeprefix("\ufeff")
+    try:
+        return tomllib.loads(text)
+    except tomllib.TOMLDecodeError as error:
+        raise _misread(str(error), text) from None
+    except RecursionError:
+        raise BadTableau("brackets are nested too deeply to be read") from None
+    except ValueError:  # an integer beyond what Python reads
+        raise BadTableau('an integer of thousands of digits; numbers are written as texts: "1/2"') from None
+
+
+def _misread(message: str, text: str) -> BadTableau:
+    found = re.search(r"\s*\(at line (\d+), column (\d+)\)", message)
+    if found is None:
+        what = re.sub(r"\s*\(at end of document\)", "", message)
+        return BadTableau(f"at the end of the file: {what}\n  A bracket or a quotation mark is left open.")
+    line, column = int(found[1]), int(found[2])
+    printed = text.split("\n")[line - 1].strip()
+    return BadTableau(
+        f"line {line}, column {column}: {message[: found.start()]}\n"
+        f'  {shown(printed)}\n  In TOML, texts and numbers stand in quotation marks: ["0", "1/2"].'
+    )
+
+
+def _check_keys(data: Mapping[str, Any]) -> None:
+    if "schema" not in data:
+        raise BadTableau(f'missing; the file begins with schema = "{SCHEMA}"', key="schema")
+    if data["schema"] != SCHEMA:
+        raise BadTableau(f'{shown(data["schema"])}; this newel reads "{SCHEMA}"', key="schema")
+    for key in data:
+        _check_known(key, "")
+    for table in ("embedded", "continuous", "notes"):
+        value = data.get(table, {})
+        if not isinstance(value, dict):
+            raise BadTableau(f"{shown(value)} is no table; write [{table}] on a line of its own", key=table)
+        for key in value:
+            _check_known(key, table)
+    for key in _REQUIRED:
+        if key not in data:
+            raise BadTableau(f"missing; {_WRITTEN_FOR.get(key, f'every file states its {key}')}", key=key)
+
+
+def _check_known(key: str, table: str) -> None:
+    if key in _KNOWN[table]:
+        return
+    where = f" in [{table}]" if table else ""
+    if table and key in _KNOWN[""]:
+        raise BadTableau(f"unknown key{where}; it belongs above the first [table]", key=key)
+    near = get_close_matches(key, _KNOWN[table], 1, 0.5)
+    hint = f"; the nearest known key is {near[0]}" if near else ""
+    raise BadTableau(f"unknown key{where}{hint}\n  Known{where}: {', '.join(_KNOWN[table])}.", key=shown(key))
+
+
+def _strings(value: Any, key: str) -> Any:
+    """Return `value` as it is, having found no TOML float in it: those have lost their digits already."""
+    if isinstance(value, float):
+        raise BadTableau(
+            f'{value!r} stands without quotation marks; write it as a string: "{value!r}"', key=key
+        )
+    if isinstance(value, list):
+        for i, item in enumerate(value, 1):
+            _strings(item, f"{key}[{i}]")
+    return value
+
+
+def format_tableau(tableau: Tableau) -> str:
+    """Return the text of a tableau's file; `parse_tableau` gives an equal tableau with the same texts.
+
+    >>> t = Tableau("midpoint-2", order=2, matrix=[[], ["1/2"]], weights=[0, 1])
+    >>> print(format_tableau(t))
+    schema = "newel-tableau/1"
+    slug = "midpoint-2"
+    name = "midpoint-2"
+    source = ""
+    numbers = "derived"
+    order = 2
+    nodes = ["0", "1/2"]
+    matrix = [
+      [],
+      ["1/2"],
+    ]
+    weights = ["0", "1"]
+    <BLANKLINE>
+    """
+    t = tableau
+    lines = [f'schema = "{SCHEMA}"', f"slug = {_quoted(t.slug)}", f"name = {_quoted(t.name)}"]
+    lines += _texts("also_called", t.also_called) + _texts("authors", t.authors)
+    lines += [] if t.year is None else [f"year = {t.year}"]
+    lines += [f"source = {_quoted(t.source)}", f"numbers = {_quoted(t.numbers)}", f"order = {t.order}"]
+    lines += _numbers("nodes", t.nodes)
+    lines += _lines("matrix", (row[:i] for i, row in enumerate(t.matrix)))
+    lines += _numbers("weights", t.weights) + _digits(t.digits)
+    if t.embedded_weights is not None:
+        lines += ["", "[embedded]", f"order = {t.embedded_order}", *_numbers("weights", t.embedded_weights)]
+    if t.continuous_weights is not None:
+        lines += ["", "[continuous]", f"order = {t.continuous_order}"]
+        lines += _lines("weights", t.continuous_weights)
+    notes = [line for key in _KNOWN["notes"] for line in _texts(key, getattr(t.notes, key))]
+    lines += ["", "[notes]", *notes] if notes else []
+    return "\n".join(lines) + "\n"
+
+
+def _quoted(text: str) -> str:
+    escaped = text.replace("\\", "\\\\").replace('"', '\\"')
+    return '"' + re.sub(r"[\x00-\x1f\x7f-\x9f\u2028\u2029\ufeff]", _escaped, escaped) + '"'
+
+
+def _escaped(match: re.Match[str]) -> str:
+    return {"\n": "\\n", "\t": "\\t"}.get(match[0], f"\\u{ord(match[0]):04X}")
+
+
+def _texts(key: str, texts: tuple[str, ...]) -> list[str]:
+    if not texts:
+        return []
+    line = f"{key} = [{', '.join(map(_quoted, texts))}]"
+    if len(line) <= 100:
+        return [line]
+    return [f"{key} = [", *(f"  {_quoted(text)}," for text in texts), "]"]
+
+
+def _numbers(key: str, row: Row) -> list[str]:
+    return f"{key} = {_wrapped(row, '')}".split("\n")
+
+
+def _lines(key: str, rows: Iterable[Row]) -> list[str]:
+    return [f"{key} = [", *(f"  {_wrapped(row, '  ')}," for row in rows), "]"]
+
+
+def _wrapped(row: Row, indent: str) -> str:
+    items = [_quoted(str(x)) for x in row]
+    if sum(map(len, items)) + 2 * len(items) <= 96:
+        return f"[{', '.join(items)}]"
+    body = "".join(f"{indent}  {item},\n" for item in items)
+    return f"[\n{body}{indent}]"
+
+
+def _digits(digits: int | Digits | None) -> list[str]:
+    if not isinstance(digits, Digits):
+        return [] if digits is None else [f"digits = {digits}"]
+    pairs = (
+        f"{_quoted(k) if '[' in k else k} = {_quoted(v) if isinstance(v, str) else v}"
+        for k, v in digits.items()
+    )
+    return [f"digits = {{ {', '.join(pairs)} }}"]
+
+
+def write_tableau(tableau: Tableau, path: str | os.PathLike[str], overwrite: bool = False) -> None:
+    """Write a tableau to a file, all of it or nothing.
+
+    Args:
+        tableau: what to write.
+        path: the file, named after the slug: `folder/slug.toml`. Its folder exists.
+        overwrite: whether a file that is there already may be replaced.
+
+    Raises:
+        OutputExists: the file is there already, and `overwrite` is False.
+        OutputFailed: the folder is missing or cannot be written, or the disk is full.
+        BadTableau: the file's name is not the slug, so that the file could not be read again.
+    """
+    place = Path(path)
+    if place.is_dir():
+        raise OutputFailed(str(place), f"is a folder; name the file: {place / tableau.slug}.toml")
+    if place.name != f"{tableau.slug}.toml":
+        raise BadTableau(f"a file of {tableau.slug!r} is named {tableau.slug}.toml", file=str(place))
+    if not overwrite and os.path.lexists(place):
+        raise OutputExists(str(place))
+    if not place.parent.is_dir():
+        raise OutputFailed(str(place), f"there is no folder {place.parent}; make it first")
+    beside = place.with_name(f".{place.name}.{secrets.token_hex(4)}.part")
+    try:
+        with beside.open("x", encoding="utf-8", newline="\n") as stream:
+            stream.write(format_tableau(tableau))
+            stream.flush()
+            os.fsync(stream.fileno())
+        _put(beside, place, overwrite)
+    except OSError as error:
+        if isinstance(error, OutputExists):
+            raise
+        raise OutputFailed(str(place), f"{_why(error)}; nothing was written") from error
+    finally:
+        beside.unlink(missing_ok=True)
+
+
+def _put(beside: Path, place: Path, overwrite: bool) -> None:
+    if overwrite:
+        beside.replace(place)
+        return
+    # A hard link is refused where the name is taken, so that a file which came meanwhile is never lost.
+    try:
+        place.hardlink_to(beside)
+    except FileExistsError:
+        raise OutputExists(str(place)) from None
+    except OSError:
+        beside.replace(place)  # this file system has no hard links
