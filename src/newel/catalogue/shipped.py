@@ -1,0 +1,88 @@
+"""What newel itself brings, through the same hooks that a package uses: names with loaders.
+
+No loader is followed here, so that asking for the names imports no engine and reads no file. The built-in
+tableaux are found by looking into the data package; a new file there is a new method, with no list to keep.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from functools import partial
+from importlib.resources import files
+from importlib.resources.abc import Traversable
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import pluggy
+
+if TYPE_CHECKING:
+    from newel.methods.tableau import Tableau
+
+__all__ = ["newel_controllers", "newel_sinks", "newel_tableaux", "tableau_files"]
+
+PACKAGE = "newel.tableaux"
+
+_CONTROLLERS = (
+    "elementary",
+    "gustafsson-pi",
+    "soderlind-pi-3-3",
+    "soderlind-pi-4-2",
+    "soderlind-h211-pi",
+    "soderlind-h211b",
+    "soderlind-h0211",
+    "soderlind-h0220",
+    "soderlind-h0330",
+    "soderlind-h0312",
+    "soderlind-h0321",
+    "soderlind-h312-pid",
+    "soderlind-h312b",
+    "soderlind-h321",
+)
+
+hookimpl = pluggy.HookimplMarker("newel")
+
+
+def tableau_files() -> dict[str, Traversable]:
+    """Return the built-in tableau files by slug, in the order of their folders `order-1`, `order-2`, …"""
+    folders = [each for each in files(PACKAGE).iterdir() if each.name.startswith("order-") and each.is_dir()]
+    folders.sort(key=lambda folder: (len(folder.name), folder.name))
+    found: dict[str, Traversable] = {}
+    for folder in folders:
+        inside = {file.name: file for file in folder.iterdir() if file.name.endswith(".toml")}
+        found |= {name.removesuffix(".toml"): inside[name] for name in sorted(inside)}
+    return found
+
+
+@hookimpl
+def newel_tableaux() -> Mapping[str, Path | Callable[[], Tableau] | str]:
+    """Return the built-in methods and the families of the core."""
+    single = {
+        slug: file if isinstance(file, Path) else partial(_read, file)
+        for slug, file in tableau_files().items()
+    }
+    return single | {"doubled-{method}": "newel.methods.families.step_doubling:doubled"}
+
+
+def _read(file: Traversable) -> Tableau:
+    """Read a tableau that is no plain file, as in a zipped package."""
+    from newel.methods.tableau_file import parse_tableau
+
+    return parse_tableau(file.read_text(encoding="utf-8"), file=file.name)
+
+
+@hookimpl
+def newel_controllers() -> Mapping[str, str]:
+    """Return the built-in step-size controllers."""
+    return {name: f"newel.stepping.controllers:{name.replace('-', '_')}" for name in _CONTROLLERS}
+
+
+@hookimpl
+def newel_sinks() -> Mapping[str, str]:
+    """Return the built-in sinks."""
+    module = "newel.results.sinks"
+    return {
+        "memory": f"{module}.memory:Memory",
+        "csv": f"{module}.csv_file:Csv",
+        "json-lines": f"{module}.json_lines:JsonLines",
+        "call": f"{module}.call:Call",
+    }
