@@ -9,27 +9,26 @@ import os
 import re
 import secrets
 import stat
-from collections.abc import Iterable, Mapping
+from collections.abc import Mapping
 from difflib import get_close_matches
 from pathlib import Path
 from typing import Any
 
 from newel.errors import BadTableau, OutputExists, OutputFailed
 from newel.methods.digits import shown
-from newel.methods.tableau import Digits, Notes, Row, Tableau
+from newel.methods.tableau import Notes, Tableau
+from newel.methods.tableau_text import NOTE_KEYS, SCHEMA, format_tableau, quoted
 
 __all__ = ["MOST_BYTES", "SCHEMA", "format_tableau", "load_tableau", "parse_tableau", "write_tableau"]
 
-SCHEMA = "newel-tableau/1"
 MOST_BYTES = 2 * 1024 * 1024
 
 _REQUIRED = ("schema", "slug", "name", "source", "numbers", "order", "matrix", "weights")
 _KNOWN = {
-    "": (*_REQUIRED[:3], "also_called", "authors", "year", *_REQUIRED[3:6], "nodes", *_REQUIRED[6:], "digits")
-    + ("embedded", "continuous", "notes"),
+    "": (*_REQUIRED, "also_called", "authors", "year", "nodes", "digits", "embedded", "continuous", "notes"),
     "embedded": ("order", "weights"),
     "continuous": ("order", "weights"),
-    "notes": ("strengths", "weaknesses", "known_failures", "remarks"),
+    "notes": NOTE_KEYS,
 }
 _WRITTEN_FOR = {
     "order": "the claimed order of the weights: order = 4",
@@ -61,25 +60,24 @@ def load_tableau(path: str | os.PathLike[str]) -> Tableau:
     place = Path(path)
     file = str(place)
     if place.suffix == ".py":
-        raise _Other(f"{file} is a model, not a tableau. For a model: newel examine {file}", file)
+        raise _sentence(f"{file} is a model, not a tableau. For a model: newel examine {file}", file)
     text = _read(place, file)
     tableau = parse_tableau(text, file=file)
     if tableau.slug != place.stem:
         raise BadTableau(
             f"{tableau.slug!r} is not the file's name\n"
-            f"  Name the file {tableau.slug}.toml, or write slug = {_quoted(place.stem)}.",
+            f"  Name the file {tableau.slug}.toml, or write slug = {quoted(place.stem)}.",
             file=file,
             key="slug",
         )
     return tableau
 
 
-class _Other(BadTableau):
-    """Not a tableau file at all: the text is a sentence and needs no file before it."""
-
-    def __init__(self, sentence: str, file: str) -> None:
-        super().__init__(sentence)
-        self.file = file
+def _sentence(text: str, file: str) -> BadTableau:
+    """Make an error whose text names the file itself."""
+    error = BadTableau(text)
+    error.file = file
+    return error
 
 
 def _read(place: Path, file: str) -> str:
@@ -88,7 +86,7 @@ def _read(place: Path, file: str) -> str:
     except FileNotFoundError:
         near = get_close_matches(place.name, _neighbours(place.parent), 1, 0.6)
         hint = f"\n  Near it: {place.parent / near[0]}" if near else ""
-        raise _Other(f"{file}: there is no such file{hint}", file) from None
+        raise _sentence(f"{file}: there is no such file{hint}", file) from None
     except (OSError, ValueError) as error:
         raise BadTableau(f"cannot be read: {_why(error)}", file=file) from None
     if stat.S_ISDIR(status.st_mode):
@@ -221,7 +219,7 @@ def _check_known(key: str, table: str) -> None:
         raise BadTableau(f"unknown key{where}; it belongs above the first [table]", key=key)
     near = get_close_matches(key, _KNOWN[table], 1, 0.5)
     hint = f"; the nearest known key is {near[0]}" if near else ""
-    raise BadTableau(f"unknown key{where}{hint}\n  Known{where}: {', '.join(_KNOWN[table])}.", key=shown(key))
+    raise BadTableau(f"unknown key{where}{hint}\n  Known{where}: {', '.join(_KNOWN[table])}.", key=key[:60])
 
 
 def _strings(value: Any, key: str) -> Any:
@@ -234,87 +232,6 @@ def _strings(value: Any, key: str) -> Any:
         for i, item in enumerate(value, 1):
             _strings(item, f"{key}[{i}]")
     return value
-
-
-def format_tableau(tableau: Tableau) -> str:
-    """Return the text of a tableau's file; `parse_tableau` gives an equal tableau with the same texts.
-
-    >>> t = Tableau("midpoint-2", order=2, matrix=[[], ["1/2"]], weights=[0, 1])
-    >>> print(format_tableau(t))
-    schema = "newel-tableau/1"
-    slug = "midpoint-2"
-    name = "midpoint-2"
-    source = ""
-    numbers = "derived"
-    order = 2
-    nodes = ["0", "1/2"]
-    matrix = [
-      [],
-      ["1/2"],
-    ]
-    weights = ["0", "1"]
-    <BLANKLINE>
-    """
-    t = tableau
-    lines = [f'schema = "{SCHEMA}"', f"slug = {_quoted(t.slug)}", f"name = {_quoted(t.name)}"]
-    lines += _texts("also_called", t.also_called) + _texts("authors", t.authors)
-    lines += [] if t.year is None else [f"year = {t.year}"]
-    lines += [f"source = {_quoted(t.source)}", f"numbers = {_quoted(t.numbers)}", f"order = {t.order}"]
-    lines += _numbers("nodes", t.nodes)
-    lines += _lines("matrix", (row[:i] for i, row in enumerate(t.matrix)))
-    lines += _numbers("weights", t.weights) + _digits(t.digits)
-    if t.embedded_weights is not None:
-        lines += ["", "[embedded]", f"order = {t.embedded_order}", *_numbers("weights", t.embedded_weights)]
-    if t.continuous_weights is not None:
-        lines += ["", "[continuous]", f"order = {t.continuous_order}"]
-        lines += _lines("weights", t.continuous_weights)
-    notes = [line for key in _KNOWN["notes"] for line in _texts(key, getattr(t.notes, key))]
-    lines += ["", "[notes]", *notes] if notes else []
-    return "\n".join(lines) + "\n"
-
-
-def _quoted(text: str) -> str:
-    escaped = text.replace("\\", "\\\\").replace('"', '\\"')
-    return '"' + re.sub(r"[\x00-\x1f\x7f-\x9f\u2028\u2029\ufeff]", _escaped, escaped) + '"'
-
-
-def _escaped(match: re.Match[str]) -> str:
-    return {"\n": "\\n", "\t": "\\t"}.get(match[0], f"\\u{ord(match[0]):04X}")
-
-
-def _texts(key: str, texts: tuple[str, ...]) -> list[str]:
-    if not texts:
-        return []
-    line = f"{key} = [{', '.join(map(_quoted, texts))}]"
-    if len(line) <= 100:
-        return [line]
-    return [f"{key} = [", *(f"  {_quoted(text)}," for text in texts), "]"]
-
-
-def _numbers(key: str, row: Row) -> list[str]:
-    return f"{key} = {_wrapped(row, '')}".split("\n")
-
-
-def _lines(key: str, rows: Iterable[Row]) -> list[str]:
-    return [f"{key} = [", *(f"  {_wrapped(row, '  ')}," for row in rows), "]"]
-
-
-def _wrapped(row: Row, indent: str) -> str:
-    items = [_quoted(str(x)) for x in row]
-    if sum(map(len, items)) + 2 * len(items) <= 96:
-        return f"[{', '.join(items)}]"
-    body = "".join(f"{indent}  {item},\n" for item in items)
-    return f"[\n{body}{indent}]"
-
-
-def _digits(digits: int | Digits | None) -> list[str]:
-    if not isinstance(digits, Digits):
-        return [] if digits is None else [f"digits = {digits}"]
-    pairs = (
-        f"{_quoted(k) if '[' in k else k} = {_quoted(v) if isinstance(v, str) else v}"
-        for k, v in digits.items()
-    )
-    return [f"digits = {{ {', '.join(pairs)} }}"]
 
 
 def write_tableau(tableau: Tableau, path: str | os.PathLike[str], overwrite: bool = False) -> None:
