@@ -1,0 +1,98 @@
+"""The order of convergence of every built-in method, measured on problems with closed-form solutions.
+
+The definition: halving the step divides the error by 2^p in the limit (any textbook, e.g. E. Hairer, S. P.
+Norsett, G. Wanner, Solving Ordinary Differential Equations I, section II.3). The problems and their
+solutions are in tests/problems/closed_forms.py; a claimed order that the march does not show, either way,
+fails here.
+"""
+
+from __future__ import annotations
+
+from fractions import Fraction
+from functools import cache
+from typing import Any
+
+import numpy as np
+import pytest
+
+import newel
+from newel.catalogue.registry import Registry
+from tests.problems.closed_forms import CLOSED_FORMS, SWITCHED, WARPED, Known, measured_order
+
+REGISTRY = Registry(folders=(), plugins=False, cache=None)
+SLUGS = REGISTRY.names()
+
+# Common practice: a measured slope within a quarter of the order is taken to show it.
+SLACK = 0.25
+
+
+@cache
+def tableau(slug: str) -> Any:
+    return REGISTRY.find(slug)
+
+
+def model_of(known: Known, breaks: tuple[float, ...] | None = None) -> newel.Model:
+    return newel.Model(
+        known.rate,
+        start=known.start,
+        stop=known.stop,
+        state=known.state,
+        breaks=known.breaks if breaks is None else breaks,
+    )
+
+
+def slope(known: Known, method: Any, breaks: tuple[float, ...] | None = None) -> float:
+    """The measured order of one method in equal steps, always an even number: a break half-way fits."""
+    model, span = model_of(known, breaks), known.stop - known.start
+
+    def error_of(count: int) -> float:
+        run = newel.march(model, method, step=span / count, sinks=[])
+        assert run.accepted == count
+        return known.error(run.last_state)
+
+    return measured_order(error_of, start=4)
+
+
+@pytest.mark.parametrize("name", list(CLOSED_FORMS))
+def test_solutions_satisfy_their_equations(name: str) -> None:
+    """Central differences of the solution against the rate, away from the breaks."""
+    known, h = CLOSED_FORMS[name], 1e-5
+    for t in np.linspace(known.start + 0.01, known.stop - 0.01, 12):
+        differences = (known.solution(t + h) - known.solution(t - h)) / (2 * h)
+        assert known.rate(float(t), known.solution(t)) == pytest.approx(differences, rel=1e-8, abs=1e-8)
+
+
+def test_solutions_are_continuous_at_their_breaks() -> None:
+    (switch,) = SWITCHED.breaks
+    before = SWITCHED.solution(float(np.nextafter(switch, 0.0)))
+    assert SWITCHED.solution(switch) == pytest.approx(before, rel=1e-14)
+
+
+@pytest.mark.parametrize("slug", SLUGS)
+def test_measured_order_is_the_claimed_order(slug: str) -> None:
+    assert abs(slope(WARPED, tableau(slug)) - tableau(slug).order) < SLACK
+
+
+@pytest.mark.parametrize("slug", SLUGS)
+def test_order_is_kept_across_a_break_on_a_step_end(slug: str) -> None:
+    assert slope(SWITCHED, tableau(slug)) > tableau(slug).order - SLACK
+
+
+@pytest.mark.parametrize("name", ["logistic", "oscillator", "paced-growth"])
+@pytest.mark.parametrize("slug", ["kutta-4", "dormand-prince-5-4", "dormand-prince-8-7"])
+def test_order_is_not_lost_on_special_problems(slug: str, name: str) -> None:
+    assert slope(CLOSED_FORMS[name], tableau(slug)) > tableau(slug).order - 2 * SLACK
+
+
+def test_without_the_declared_break_the_order_is_lost() -> None:
+    """A stage at the far side of the jump makes Kutta's fourth order first order."""
+    assert slope(SWITCHED, tableau("kutta-4"), breaks=()) < 1.5
+
+
+def test_one_wrong_coefficient_costs_the_order() -> None:
+    """A fifth moved between the weights of equal nodes keeps every quadrature condition; order 3 is lost."""
+    right = tableau("kutta-4")
+    weights = list(right.weights)
+    weights[1], weights[2] = weights[1] + Fraction(1, 5), weights[2] - Fraction(1, 5)
+    wrong = newel.Tableau("wrong-4", name="wrong", order=2, matrix=right.matrix, weights=weights)
+    assert slope(WARPED, wrong) < 2.5
