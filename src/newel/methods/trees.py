@@ -20,7 +20,7 @@ import attrs
 if TYPE_CHECKING:
     from collections.abc import Iterator
 
-__all__ = ["Tree", "tree_count", "trees", "trees_up_to"]
+__all__ = ["Tree", "tree_at", "tree_count", "trees", "trees_up_to"]
 
 
 @attrs.frozen(eq=False, slots=False)
@@ -44,7 +44,7 @@ class Tree:
 
     @cached_property
     def symmetry(self) -> int:
-        """The order σ of the group of maps of the tree to itself (Butcher, Numerical Methods for ODEs, §30)."""
+        """The order σ of the symmetry group of the tree (Butcher, Numerical Methods for ODEs, §30)."""
         runs = ((child, len(list(same))) for child, same in groupby(self.children))
         return prod(factorial(count) * child.symmetry**count for child, count in runs)
 
@@ -131,6 +131,17 @@ def trees_up_to(order: int) -> list[Tree]:
     """
     trees(order)
     return _FOREST.all[: sum(len(same) for same in _FOREST.by_order[: order + 1])]
+
+
+def tree_at(index: int) -> Tree:
+    """Return the tree with this index in the list of all trees.
+
+    >>> tree_at(3).bracket
+    '[[τ]]'
+    """
+    while index >= len(_FOREST.all):
+        _FOREST.grow(len(_FOREST.by_order))
+    return _FOREST.all[index]
 
 
 def tree_count(order: int) -> int:
