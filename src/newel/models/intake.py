@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import dataclasses
+import datetime
 import numbers
 import types
 from collections.abc import Callable
 from decimal import Decimal
 from enum import Enum
 from fractions import Fraction
+from pathlib import PurePath
 from typing import Any
 
 import attrs
@@ -17,12 +19,15 @@ import numpy as np
 from newel.models.checks import bad, finite, where
 from newel.protocols import Array
 
-__all__ = ["copy_params", "own_state"]
+__all__ = ["copy_params", "differs", "own_state"]
 
 KEPT_DTYPES = frozenset("fdgFD")
 """The type characters of float32, float64, longdouble, complex64 and complex128."""
 
-IMMUTABLE = (numbers.Number, np.generic, str, bytes, type(None), Fraction, Decimal, Enum, range, slice)
+IMMUTABLE = (
+    *(numbers.Number, np.generic, Fraction, Decimal, str, bytes, type(None), Enum, range, slice),
+    *(datetime.date, datetime.time, datetime.timedelta, datetime.tzinfo, PurePath),
+)
 
 
 def own_state(value: Any) -> Array:
@@ -142,11 +147,50 @@ def _copy_fields(value: Any, path: str, kept: list[str], seen: dict[int, Any]) -
     # Made without __init__: a class may check or convert there what it was once given in another form.
     kind: type[Any] = type(value)
     fresh = seen[id(value)] = object.__new__(kind)
+    for name in _field_names(value):
+        object.__setattr__(fresh, name, _copy(getattr(value, name), f"{path}.{name}", kept, seen))
+    return fresh
+
+
+def _field_names(value: Any) -> list[str]:
     names = [field.name for field in getattr(type(value), "__attrs_attrs__", ())]
     if dataclasses.is_dataclass(value):
         names += [field.name for field in dataclasses.fields(value)]
     names += list(getattr(value, "__dict__", ()))
-    for name in dict.fromkeys(names):
-        if hasattr(value, name):
-            object.__setattr__(fresh, name, _copy(getattr(value, name), f"{path}.{name}", kept, seen))
-    return fresh
+    return [name for name in dict.fromkeys(names) if hasattr(value, name)]
+
+
+def differs(one: Any, other: Any) -> bool:
+    """Whether two values, copies of each other at first, differ now; NaN equals NaN.
+
+    Looks into what `copy_params` copies; other things differ only if they are other things.
+    """
+    return _differs(one, other, set())
+
+
+def _differs(one: Any, other: Any, seen: set[tuple[int, int]]) -> bool:
+    if one is other or (id(one), id(other)) in seen:
+        return False
+    if type(one) is not type(other):
+        return True
+    if isinstance(one, IMMUTABLE):
+        return bool(one != other) and not bool(one != one and other != other)
+    if isinstance(one, (set, frozenset)):
+        return bool(one != other)
+    seen.add((id(one), id(other)))  # containers may hold themselves
+    if isinstance(one, np.ndarray):
+        return _arrays_differ(one, other, seen)
+    if isinstance(one, dict):
+        return one.keys() != other.keys() or any(_differs(one[key], other[key], seen) for key in one)
+    if isinstance(one, (list, tuple)):
+        pairs = zip(one, other, strict=False)
+        return len(one) != len(other) or any(_differs(*pair, seen) for pair in pairs)
+    return any(_differs(getattr(one, name), getattr(other, name), seen) for name in _field_names(one))
+
+
+def _arrays_differ(one: Array, other: Array, seen: set[tuple[int, int]]) -> bool:
+    if one.shape != other.shape or one.dtype != other.dtype:
+        return True
+    if one.dtype == object:
+        return any(_differs(*pair, seen) for pair in zip(one.reshape(-1), other.reshape(-1), strict=True))
+    return bool(np.any((one != other) & ~((one != one) & (other != other))))
