@@ -1,9 +1,9 @@
 """The second opinion is itself held to published counts, identities and error norms.
 
-Counts: OEIS A000081 (from memory). Error norms: J. R. Dormand and P. J. Prince, J. Comput. Appl. Math. 6 (1980)
-19-26, and A. Ralston, Math. Comp. 16 (1962) 431-437, for the values 3.99e-4 and 1/6 (from memory); the further
-digits and the other norms were computed by other code. Shanks: E. B. Shanks, Math. Comp. 20 (1966) 21-38 (from
-memory): five stages that miss order 5 by 1.5e-6.
+Counts: OEIS A000081 (from memory). Error norms: J. R. Dormand and P. J. Prince, J. Comput. Appl. Math. 6
+(1980) 19-26, and A. Ralston, Math. Comp. 16 (1962) 431-437, for the values 3.99e-4 and 1/6 (from memory); the
+further digits and the other norms were computed by other code. Shanks: E. B. Shanks, Math. Comp. 20 (1966)
+21-38 (from memory): five stages that miss order 5 by 1.5e-6.
 """
 
 from __future__ import annotations
