@@ -71,8 +71,8 @@ class Methods:
         others = [offer for offer, made in standing[1:] if made.digest != chosen.digest]
         if others and first.origin.kind != "built-in":
             raise _taken(slug, (first, *others))
-        for offer, error in failed:
-            self._shelves.leave_out(offer, error)
+        for offer, reason in failed:
+            self._shelves.leave_out(offer, reason)
         for other in others:
             self._shelves.clash(first, other)
         return chosen

@@ -185,7 +185,7 @@ def _register(manager: pluggy.PluginManager, plugin: object, name: str) -> tuple
     """Register a plugin whole, or not at all; return the rule that it breaks with the function concerned."""
     for hook in (each for each in dir(plugin) if each.startswith("newel_")):
         function = getattr(plugin, hook)
-        if manager.parse_hookimpl_opts(plugin, hook) is None:  # type: ignore[arg-type]  # pluggy takes any object
+        if manager.parse_hookimpl_opts(plugin, hook) is None:
             if hook in KINDS and callable(function):
                 mark = '@pluggy.HookimplMarker("newel")'
                 return f"{_signature(hook, function)} is not marked: put {mark} above it", function

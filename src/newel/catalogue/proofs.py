@@ -33,8 +33,15 @@ Listed = Mapping[str, Any]
 """One entry of `tableaux/proved.toml`: slug, key, name, also_called, verdict."""
 
 
-def user_cache_folder() -> Path:
-    """Return `NEWEL_CACHE`, or else the platform's folder for caches, with `newel` below it."""
+def user_cache_folder() -> Path | None:
+    """Return `NEWEL_CACHE`, or else `newel` in the platform's folder for caches; None for a homeless user."""
+    try:
+        return _cache_folder()
+    except RuntimeError:  # no home folder can be determined
+        return None
+
+
+def _cache_folder() -> Path:
     named = os.environ.get("NEWEL_CACHE")
     if named:
         return Path(named).expanduser()

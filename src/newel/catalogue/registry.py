@@ -20,6 +20,7 @@ if TYPE_CHECKING:
     from newel.catalogue.method_shelf import Methods
     from newel.catalogue.plugins import PluginReport
     from newel.catalogue.shelves import Shelves
+    from newel.catalogue.summaries import Summary
     from newel.methods.order_conditions import Verdict
     from newel.methods.tableau import Tableau
     from newel.protocols import Controller, Sink
@@ -52,7 +53,7 @@ class Registry:
     ) -> None:
         self._folders = None if folders is None else tuple(Path(folder).expanduser() for folder in folders)
         self._ask_packages = plugins
-        self._proofs = Proofs(user_cache_folder() if cache is USER_CACHE else cache)
+        self._proofs = Proofs(_folder(cache))
         self._lock = threading.RLock()
         self._gathered: tuple[Shelves, Methods, Equipment] | None = None
         self._found: dict[str, Tableau] = {}
@@ -140,12 +141,29 @@ class Registry:
     def tableaux(self, progress: Progress | None = None) -> Iterator[Tableau]:
         """Yield every method that stands; one that does not is left out with a PluginWarning."""
         for slug in self.names():
-            try:
-                found = self.find(slug, progress)
-            except (BadTableau, NotProved, SlugTaken) as error:
-                self._shelves.leave_out(self._shelves.offers("tableau", slug)[-1], error)
-                continue
-            yield found
+            found = self._standing(slug, progress)
+            if found is not None:
+                yield found
+
+    def _standing(self, slug: str, progress: Progress | None) -> Tableau | None:
+        try:
+            return self.find(slug, progress)
+        except (BadTableau, NotProved, SlugTaken) as error:
+            self._shelves.leave_out(self._shelves.offers("tableau", slug)[-1], error)
+            return None
+
+    def summaries(self, progress: Progress | None = None) -> tuple[Summary, ...]:
+        """Return one line for every method that stands, as `tableaux`, but quick for the built-in ones."""
+        from newel.catalogue.summaries import Summary, listed_summary
+
+        found = []
+        for slug in self.names():
+            offer = self._shelves.offers("tableau", slug)[0]
+            summary = listed_summary(slug, offer.loader) if offer.origin.kind == "built-in" else None
+            if summary is None and (tableau := self._standing(slug, progress)) is not None:
+                summary = Summary.of(tableau)
+            found += [] if summary is None else [summary]
+        return tuple(found)
 
     def register(self, tableau: Tableau, trust: bool = False, progress: Progress | None = None) -> Tableau:
         """Prove a tableau and make it known under its slug; return it with its proof.
@@ -243,6 +261,12 @@ class Registry:
         if not verdict:
             raise _not_proved(tableau, verdict)
         return tableau if tableau.proof == verdict else tableau.with_proof(verdict)
+
+
+def _folder(cache: str | Path | None) -> Path | None:
+    if cache is USER_CACHE:
+        return user_cache_folder()
+    return None if cache is None else Path(cache).expanduser()
 
 
 def _no_tableau(text: str) -> UnknownMethod:
