@@ -49,7 +49,7 @@ def doubled(tableau: Tableau) -> Tableau:
         size = f"order {p + 1} and {3 * s - 1} stages"
         raise BadRequest(
             f"{tableau.slug} cannot be doubled: the pair would have {size}\n"
-            f"  A tableau has at most order {HIGHEST_ORDER}, {MOST_STAGES} stages, and 80 characters in its slug.",
+            f"  At most order {HIGHEST_ORDER}, {MOST_STAGES} stages and a slug of 80 characters are allowed.",
             argument="method",
         )
     nodes, matrix, weights, embedded = _arrays(tableau)
