@@ -135,9 +135,13 @@ class OutputExists(NewelError, FileExistsError):
 
 
 class OutputFailed(NewelError, OSError):
-    """A sink could not open, write or close its output. Attributes: `path`, `reason`."""
+    """A sink could not open, write or close its output.
+
+    Attributes: `path`, `reason`, `run` (what was computed until then, or None where nothing was run).
+    """
 
     exit_status = 1
+    run: Run | None = None
 
     def __init__(self, path: str, reason: str) -> None:
         self.path, self.reason = path, reason

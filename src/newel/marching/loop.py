@@ -1,0 +1,390 @@
+"""The loop: one accepted step after another, with breaks, events, limits and rejections.
+
+`march` and `Stepper` both drive this; nothing goes twice through the same place.
+"""
+
+from __future__ import annotations
+
+import math
+from fractions import Fraction
+from typing import TYPE_CHECKING, Any
+
+import attrs
+import numpy as np
+
+from newel.errors import BadModel
+from newel.marching.failures import CannotGoOn, not_finite, outside
+from newel.marching.first_step import first_step
+from newel.marching.pacing import Pace
+from newel.marching.requests import breaks_inside, check_state_kind, pace_of, tolerances
+from newel.marching.switches import Switches
+from newel.models.intake import copy_params
+from newel.protocols import Array, Controller, ControllerMemory
+from newel.results.run import EventRecord, Note
+from newel.stepping.numpy_step import NumpyStep
+from newel.stepping.rate_call import RateCall, where_defined
+from newel.stepping.rules import Adaptive, StepRule
+from newel.stepping.switching.crossings import Crossings
+from newel.stepping.switching.spacing import just_before, spacing
+
+if TYPE_CHECKING:
+    from newel.methods.tableau import Tableau
+    from newel.models.model import Model
+
+__all__ = ["Loop", "Saved"]
+
+# Measured and common practice: a stage that is no number, or a state outside its limits, quarters the step.
+_QUARTER, _MOST_QUARTERINGS = 0.25, 10
+_STRETCH, _FEWEST_SPACINGS, _SAME_PLACE = 1.01, 4.0, 4.0
+
+
+@attrs.frozen(eq=False)
+class Saved:
+    """All that a loop needs to go on from here to the bit."""
+
+    time: Any
+    state: Array
+    rate: Array | None
+    carry: Array | None
+    next_step: float
+    last_step: Any
+    memory: ControllerMemory
+    pace: Any
+    signs: tuple[int, ...]
+    break_index: int
+    params: Any
+    counters: tuple[int, int, int]
+    events: int
+    notes: int
+
+
+class Loop:
+    """A march in progress.
+
+    Args:
+        model: what is marched. tableau: the method, with embedded weights where the rule is adaptive.
+        rule: the step rule. controller: where the rule is adaptive.
+        estimate: whether an error estimate is wanted though the rule does not use it.
+
+    Attributes:
+        time: where the march is, in time units. step: the engine, whose `state` is the state there.
+        next_step: the length proposed next (positive; adaptive only). last_step: signed, of the last step.
+        accepted, rejected: counters. notes, events: for the run. ended_by: the label of an ending event.
+    """
+
+    def __init__(
+        self,
+        model: Model,
+        tableau: Tableau,
+        rule: StepRule,
+        controller: Controller | None = None,
+        estimate: bool = False,
+    ) -> None:
+        self.model, self.tableau, self.rule, self.controller = model, tableau, rule, controller
+        self.exact_time = model.state.dtype == np.dtype(object)
+        self.params = copy_params(model.params)[0]
+        self.extra: tuple[Any, ...] = () if model.params is None else (self.params,)
+        self.direction = 1.0 if model.forward else -1.0
+        self.start: Any = Fraction(model.start) if self.exact_time else model.start
+        self.stop: Any = Fraction(model.stop) if self.exact_time else model.stop
+        self.time: Any = self.start
+        self.accepted = self.rejected = 0
+        self.last_step: Any = 0.0
+        self.next_step = 0.0
+        self.memory: ControllerMemory = ()
+        self.notes = [Note(text) for text in model.notes]
+        self.events: list[EventRecord] = []
+        self.ended_by: str | None = None
+        self.pending: Any = None
+        self.switches = Switches()
+        self.adaptive = isinstance(rule, Adaptive)
+        self.order = min(tableau.order, tableau.embedded_order or 0) + 1 if self.adaptive else 0
+        check_state_kind(model, self.adaptive)
+        self.limits = tolerances(model, rule) if isinstance(rule, Adaptive) else None
+        self.rate = RateCall(model, self.params)
+        self.step = NumpyStep(
+            tableau,
+            self.rate,
+            model.state,
+            estimate=self.adaptive or estimate,
+            compensated=not self.adaptive or tableau.order >= 7,
+            after_stage=None if model.after_stage is None else self._after_stage,
+        )
+        self.breaks = breaks_inside(model)
+        self.break_index = 0
+        self.crossings = Crossings(model.events, self.extra)
+        self.pace = Pace() if self.adaptive else pace_of(rule, self.start, self.stop, self.extra)
+        if self.pace.note:
+            self.notes.append(Note(self.pace.note))
+
+    def prepare(self) -> None:
+        """Make the first rate call, arm the events, and choose the first step."""
+        step = self.step
+        if not self._inside(step.state):
+            raise BadModel(outside(self.model, step.state, self.time) + ", at the start", argument="within")
+        self.rate.first(self.time, step.state, step.rows[1])
+        step.evaluate = self.rate.evaluate
+        step.fresh = True
+        step.calls += 1
+        self.notes += [Note(text, float(self.time)) for text in self.rate.notes]
+        if not self.exact_time and not np.isfinite(step.rows[1]).all():
+            raise CannotGoOn(
+                "not finite",
+                f"{not_finite(step, self.model, self.time, 0.0)}, at the start",
+                f"  {where_defined(self.model.rate)}",
+            )
+        self.crossings.arm(self.time, step.state)
+        if isinstance(self.rule, Adaptive):
+            assert self.controller is not None
+            self.memory = self.controller.start()
+            self.next_step = self._first_length(self.rule)
+
+    def _first_length(self, rule: Adaptive) -> float:
+        assert self.limits is not None
+        rel_tol, abs_tol, norm, smallest, largest = self.limits
+        if rule.first is not None:
+            return min(rule.first, largest)
+        span = abs(self._break_ahead() - self.time)
+        length = first_step(self.step, self.time, span, self.direction, self.order, rel_tol, abs_tol, norm)
+        least = _FEWEST_SPACINGS * spacing(self.time)
+        return min(max(length, smallest, least), largest)
+
+    # One accepted step.
+
+    def _break_ahead(self) -> Any:
+        return self.breaks[self.break_index] if self.break_index < len(self.breaks) else self.stop
+
+    def advance(self, landing: float | None = None) -> str:
+        """Make one accepted step, at most to `landing`; return the label of an event there, or ""."""
+        if self.adaptive:
+            t, h = self._adaptive_step(landing)
+        else:
+            t, h = self._paced_step(landing)
+        label = ""
+        if self.crossings.events:
+            t, label = self.switches.look(self, t, h)
+        self._commit(t, restart=bool(label))
+        return label
+
+    def ceiling(self, t: Any) -> Any:
+        """The last time before a break, for a step that ends on it."""
+        if self.break_index < len(self.breaks) and t == self.breaks[self.break_index]:
+            return just_before(t, self.direction)
+        return None
+
+    def _paced_step(self, landing: float | None) -> tuple[Any, Any]:
+        ahead, h = self.pace.target(self.time, self.step.state)
+        wall: Any = self._break_ahead()
+        if landing is not None and (landing - wall) * self.direction < 0:
+            wall = landing
+        if wall != ahead and not self.exact_time:
+            gap = (wall - ahead) * self.direction
+            same = abs(gap) <= _SAME_PLACE * max(spacing(wall), spacing(self.time))
+            if same and ahead != self.stop:
+                # A break that rounding sets beside a grid point is that grid point.
+                self.pace.reached(ahead)
+            if gap < 0 or same:
+                ahead, h = wall, wall - self.time
+        self.step.attempt(self.time, h, self.ceiling(ahead))
+        if not self.step.new_is_finite():
+            self.refuse_not_finite(h)
+        if not self._inside(self.step.new):
+            raise CannotGoOn("within", outside(self.model, self.step.new, ahead), "  Take a smaller step.")
+        return ahead, h
+
+    def _adaptive_step(self, landing: float | None) -> tuple[float, float]:
+        controller, step, time = self.controller, self.step, self.time
+        assert controller is not None
+        assert self.limits is not None
+        rel_tol, abs_tol, norm, smallest, largest = self.limits
+        wall = self._break_ahead()
+        if landing is not None and (landing - wall) * self.direction < 0:
+            wall = landing
+        remaining = (wall - time) * self.direction
+        quarterings, rejected_here = 0, 0
+        while True:
+            wanted = length = self.next_step
+            lands = wanted * _STRETCH >= remaining
+            if lands:
+                length = remaining
+            elif 2.0 * wanted > remaining:
+                length = 0.5 * remaining
+            ahead = wall if lands else time + length * self.direction
+            if not lands and length < max(smallest, _FEWEST_SPACINGS * spacing(time)):
+                raise self._underflow(length, rejected_here)
+            h = ahead - time
+            step.attempt(time, h, self.ceiling(ahead) if lands else None)
+            error = step.error_norm(rel_tol, abs_tol, norm)
+            if not error < math.inf or not self._inside(step.new):
+                quarterings += 1
+                self.rejected += 1
+                if quarterings == _MOST_QUARTERINGS:
+                    raise self._no_way(error, h)
+                self.next_step = length * _QUARTER
+                continue
+            accepted, factor, self.memory = controller.decide(error, length, self.order, self.memory)
+            if accepted:
+                break
+            self.rejected += 1
+            rejected_here += 1
+            self.next_step = length * factor
+        following = length * factor
+        if length < wanted and not rejected_here and not quarterings and following < wanted:
+            # The step was cut to land, not because of its error: the proposal before still stands.
+            following = wanted
+        self.next_step = min(following, largest)
+        return ahead, h
+
+    def _inside(self, state: Array) -> bool:
+        within = self.model.within
+        if within is None:
+            return True
+        if callable(within):
+            return bool(within(self.time, state, *self.extra))
+        return bool(((state >= within[0]) & (state <= within[1])).all())
+
+    def _advice(self) -> str:
+        return f"  {where_defined(self.model.rate)}"
+
+    def _no_way(self, error: float, h: float) -> CannotGoOn:
+        words = f"  The step was quartered {_MOST_QUARTERINGS} times.  {where_defined(self.model.rate)}"
+        if error < math.inf:
+            return CannotGoOn("within", outside(self.model, self.step.new, self.time + h), words)
+        return CannotGoOn("not finite", not_finite(self.step, self.model, self.time, h), words)
+
+    def _underflow(self, length: float, rejected: int) -> CannotGoOn:
+        smallest = 0.0 if self.limits is None else self.limits.smallest
+        least = max(smallest, _FEWEST_SPACINGS * spacing(self.time))
+        bound = "smallest" if least == smallest else "four spacings of t"
+        return CannotGoOn(
+            "underflow",
+            f"the step at t = {self.time!r} would have to be {length:.3g}, below {bound} ({least:.3g}), "
+            f"after {rejected} rejections there",
+            "  A jump or kink of the rate that is no declared break, a singularity, or a tolerance below the "
+            "model's own noise does this.",
+        )
+
+    def _commit(self, t: Any, restart: bool) -> None:
+        """Make the attempted step the state; a Ctrl-C in here is finished by `settle`."""
+        at_break = self._pass_breaks(t)
+        self.last_step = t - self.time
+        self.pending = (t, self.accepted + 1)
+        self.step.accept()
+        self.time, self.accepted = self.pending
+        self.pending = None
+        self.pace.reached(t)
+        after_step = self.model.after_step
+        if after_step is not None:
+            self._after_step(after_step(t, self.step.state, *self.extra))
+        if at_break or restart:
+            self.step.fresh = False
+            if self.controller is not None:
+                self.memory = self.controller.start()
+
+    def _pass_breaks(self, t: Any) -> bool:
+        before = self.break_index
+        while self.break_index < len(self.breaks):
+            if (self.breaks[self.break_index] - t) * self.direction > 0:
+                break
+            self.break_index += 1
+        return self.break_index > before
+
+    def accept_proposal(self, t: Any) -> None:
+        """Commit a step that a caller proposed; its events are recorded at its end."""
+        happened = self.crossings.settle(t, self.step.new) if self.crossings.events else []
+        for i in happened:
+            event = self.crossings.events[i]
+            self.events.append(EventRecord(event.label, float(t), self.step.new.copy()))
+        self._commit(t, restart=bool(happened))
+
+    def refuse_not_finite(self, h: Any) -> None:
+        """Say where the last attempt stopped being finite."""
+        raise CannotGoOn("not finite", not_finite(self.step, self.model, self.time, h), self._advice())
+
+    def restart(self, t: Any, state: Array) -> None:
+        """Go on from another time and state; nothing is remembered but counters and events."""
+        self.time, self.ended_by = t, None
+        self.break_index = 0
+        self._pass_breaks(t)
+        self.replace_state(state)
+        self.pace.restart(t)
+        if self.controller is not None:
+            self.memory = self.controller.start()
+
+    def settle(self) -> None:
+        """Finish a commit that an interruption cut short, so that time and state belong together."""
+        if self.pending is not None:
+            self.step.slab[0] = self.step.new_flat
+            self.time, self.accepted = self.pending
+            self.pending = None
+
+    def _after_stage(self, t: Any, y: Array) -> Any:
+        assert self.model.after_stage is not None
+        return self.model.after_stage(t, y, *self.extra)
+
+    def _after_step(self, given: Any) -> None:
+        if given is None:
+            return
+        array = np.asarray(given)
+        if array.shape != self.step.shape:
+            raise BadModel(
+                f"after_step returned shape {array.shape}, and the state has shape {self.step.shape}\n"
+                "  Return an array of the state's shape, or None to leave it.",
+                argument="after_step",
+            )
+        self.replace_state(array)
+
+    def replace_state(self, state: Array) -> None:
+        """Put another state in the place of the present one; the rate there is evaluated anew."""
+        self.step.load(state.astype(self.step.dtype, casting="same_kind"))
+        self.crossings.arm(self.time, self.step.state)
+
+    # Saving and restoring.
+
+    def save(self) -> Saved:
+        """Return all that is needed to go on from here to the bit."""
+        step = self.step
+        return Saved(
+            time=self.time,
+            state=step.slab[0].copy(),
+            rate=step.slab[1].copy() if step.fresh else None,
+            carry=step.carry.copy() if step.compensated else None,
+            next_step=self.next_step,
+            last_step=self.last_step,
+            memory=self.memory,
+            pace=self.pace.save(),
+            signs=tuple(self.crossings.signs),
+            break_index=self.break_index,
+            params=copy_params(self.params)[0],
+            counters=(self.accepted, self.rejected, step.calls),
+            events=len(self.events),
+            notes=len(self.notes),
+        )
+
+    def restore(self, saved: Saved) -> None:
+        """Go back to what `save` returned; counters and events go back with it."""
+        step = self.step
+        step.slab[0] = saved.state
+        step.fresh = saved.rate is not None
+        if saved.rate is not None:
+            step.slab[1] = saved.rate
+        if saved.carry is not None:
+            step.carry[:] = saved.carry
+        self._take_params(copy_params(saved.params)[0])
+        self.time, self.next_step, self.last_step = saved.time, saved.next_step, saved.last_step
+        self.memory, self.break_index = saved.memory, saved.break_index
+        self.pace.restore(saved.pace)
+        self.crossings.signs = list(saved.signs)
+        self.accepted, self.rejected, step.calls = saved.counters
+        self.ended_by = None
+        del self.events[saved.events :], self.notes[saved.notes :]
+
+    def _take_params(self, params: Any) -> None:
+        """Go on with other params; every function of the model gets them from now on."""
+        if self.model.params is None:
+            return
+        self.params, self.extra = params, (params,)
+        self.rate.take_params(self.extra)
+        self.step.evaluate = self.rate.evaluate
+        self.crossings.extra = self.extra
+        self.pace.extra = self.extra

@@ -1,0 +1,281 @@
+"""One step of any explicit method, on NumPy.
+
+The slab is one array of s+1 rows: row 0 the state, rows 1..s the stage rates. Once per attempt the
+coefficients are multiplied by h into a work matrix whose first column stays 1, so that each stage state is
+one product of a row with a prefix of the slab, written in place. Rows, prefixes and buffers are views made
+once; a stage never reads a row that this attempt has not yet written. Wide states go through the same lines
+in pieces that stay in the processor's cache, so that a stage reads each row from memory once.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable
+from fractions import Fraction
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from newel.errors import BadModel, BadRequest
+from newel.protocols import Array, Norm
+
+if TYPE_CHECKING:
+    from newel.methods.exact import Exact
+    from newel.methods.tableau import Tableau
+    from newel.stepping.rate_call import RateCall
+
+__all__ = ["NumpyStep", "coefficient_array"]
+
+# Bytes of one row that are worked on at a time: a dozen of them fit into a second-level cache.
+_PIECE = 32_768
+
+
+def _read_only(array: Array, shape: tuple[int, ...]) -> Array:
+    view = array.reshape(shape).view()
+    view.flags.writeable = False
+    return view
+
+
+def coefficient_array(rows: list[list[Exact]], dtype: np.dtype[Any]) -> Array:
+    """Return exact coefficients as an array (unitless) of the dtype that states of `dtype` are combined with.
+
+    Raises:
+        BadRequest: for object states where a coefficient is no fraction.
+    """
+    if dtype == np.dtype(object):
+        if any(entry.surd for row in rows for entry in row):
+            raise BadRequest(
+                "this method has coefficients with square roots, which object states cannot take\n"
+                "  Choose a method with rational coefficients, or a state of dtype longdouble.",
+                argument="method",
+            )
+        return np.array([[Fraction(entry.rational) for entry in row] for row in rows], dtype=object)
+    if dtype == np.dtype(np.longdouble):
+        ld = np.longdouble
+        table = [
+            [
+                ld(str(e.rational.numerator)) / ld(str(e.rational.denominator))
+                + ld(str(e.surd.numerator)) / ld(str(e.surd.denominator)) * np.sqrt(ld(e.radicand))
+                for e in row
+            ]
+            for row in rows
+        ]
+        return np.array(table, dtype=ld)
+    return np.array([[float(entry) for entry in row] for row in rows], dtype=dtype)
+
+
+class NumpyStep:
+    """Makes steps of one tableau for one state.
+
+    Args:
+        tableau: the method; its nodes, matrix, weights and, for `estimate`, embedded weights are used.
+        rate: the bound rate; its shape and dtype are the state's.
+        state: the state to start from, shape and dtype of the model; copied.
+        estimate: whether an error estimate is wanted.
+        compensated: whether the state is summed with Kahan's compensation (W. Kahan, Communications of the
+            ACM 8 (1965) 40), which keeps what is lost below the last place of the state from step to step.
+        after_stage: `after_stage(t, y)` sees each stage state and the new state; an array replaces it.
+
+    Attributes:
+        state, new: read-only views of the state before and after the step, in the state's shape.
+        has_estimate: whether an error estimate is made. fresh: whether row 1 holds the rate at `state`.
+        calls: how often the rate was called.
+    """
+
+    def __init__(
+        self,
+        tableau: Tableau,
+        rate: RateCall,
+        state: Array,
+        *,
+        estimate: bool,
+        compensated: bool,
+        after_stage: Callable[[Any, Array], Any] | None = None,
+    ) -> None:
+        shape, dtype, size = state.shape, state.dtype, state.size
+        s = self.stages = tableau.stages
+        self.rate, self.shape, self.dtype, self.after_stage = rate, shape, dtype, after_stage
+        self.evaluate = rate.evaluate
+        self.first_same_as_last = bool(tableau.first_same_as_last)
+        self.calls, self.fresh, self.has_estimate = 0, False, estimate
+        self.compensated = compensated and dtype != np.dtype(object)
+        self._coefficients(tableau, estimate)
+
+        self.slab = np.zeros((s + 1, size), dtype=dtype)
+        self.stage, self.new_flat = np.zeros(size, dtype=dtype), np.zeros(size, dtype=dtype)
+        self.state = _read_only(self.slab[0], shape)
+        self.new = _read_only(self.new_flat, shape)
+        self.rows = [self.slab[i].reshape(shape) for i in range(s + 1)]
+        self._pieces(size, dtype)
+        self.load(state)
+
+    def _coefficients(self, tableau: Tableau, estimate: bool) -> None:
+        s, dtype = self.stages, self.dtype
+        rows = [list(row) for row in tableau.matrix] + [list(tableau.weights)]
+        if estimate:
+            embedded = tableau.embedded_weights
+            assert embedded is not None, "the march asks for an estimate only of a pair"
+            rows.append([w - e for w, e in zip(tableau.weights, embedded, strict=True)])
+        self.base = coefficient_array(rows, dtype)
+        self.work = np.ones((len(rows), s + 1), dtype=dtype)
+        self.scaled = self.work[:, 1:]
+        self.step_of_work: Any = None
+        if dtype == np.dtype(object):
+            self.nodes: list[Any] = [Fraction(c.rational) for c in tableau.nodes]
+        else:
+            self.nodes = [float(c) for c in tableau.nodes]
+
+    def _pieces(self, size: int, dtype: np.dtype[Any]) -> None:
+        """Make every view that the step loop uses, piece by piece of the state."""
+        s, slab = self.stages, self.slab
+        length = max(1, min(size, _PIECE // dtype.itemsize))
+        cuts = [slice(a, min(a + length, size)) for a in range(0, size, length)]
+        stage_view = _read_only(self.stage, self.shape)
+        self.plan = []
+        for i in range(1, s):
+            last = self.first_same_as_last and i == s - 1
+            target = self.new_flat if last else self.stage
+            parts = [(slab[: i + 1, cut], target[cut]) for cut in cuts]
+            view = self.new if last else stage_view
+            self.plan.append((self.work[i, : i + 1].dot, parts, self.nodes[i], view, self.rows[i + 1], last))
+        self.final_dot = self.work[s].dot
+        self.final_parts = [(slab[:, cut], self.new_flat[cut]) for cut in cuts]
+        real = np.zeros(0, dtype=dtype).real.dtype
+        self.zeros = np.zeros(length, dtype=dtype)
+        self.scratch = np.zeros(length, dtype=dtype)
+        self.scale_scratch = np.zeros((2, length), dtype=real)
+        quotient = np.float64 if real == np.dtype(np.float32) else real
+        self.quotient = np.zeros(length, dtype=quotient)
+        self.cuts = cuts
+        if self.compensated:
+            # The last stage of a first-same-as-last method is not yet there when the new state is formed.
+            known = s - 1 if self.first_same_as_last else s
+            self.increment_dot = self.work[s, 1 : known + 1].dot
+            self.increment_rates = slab[1 : known + 1]
+            self.carry, self.next_carry = np.zeros(size, dtype=dtype), np.zeros(size, dtype=dtype)
+        if len(self.base) > s + 1:
+            self.error_dot = self.work[s + 1, 1:].dot
+            self.error_parts = [(slab[1:, c], slab[0, c], self.new_flat[c], c) for c in cuts]
+
+    def load(self, state: Array) -> None:
+        """Start anew from this state, shape and dtype as at first; the rate at it is not known yet."""
+        self.slab[0] = state.reshape(-1)
+        self.fresh = False
+        if self.compensated:
+            self.carry[:] = 0
+
+    def begin(self, t: Any) -> None:
+        """Evaluate the rate at the state, unless it is there already."""
+        if not self.fresh:
+            self.evaluate(t, self.state, self.rows[1])
+            self.calls += 1
+            self.fresh = True
+
+    def attempt(self, t: Any, h: Any, ceiling: Any = None) -> None:
+        """Fill the slab and `new` with a step of length h (signed) from t; the state stays as it is.
+
+        `ceiling`: no stage is evaluated beyond it, in the direction of h: the last time before a break.
+        """
+        if h != self.step_of_work:
+            np.multiply(self.base, h, self.scaled)
+            self.step_of_work = h
+        if not self.fresh:
+            self.begin(t)
+        evaluate, after_stage = self.evaluate, self.after_stage
+        for dot, parts, node, view, row, last in self.plan:
+            if last and self.compensated:
+                self._combine_compensated()
+            else:
+                for prefix, out in parts:
+                    dot(prefix, out)
+            time = t + node * h
+            if ceiling is not None and (time - ceiling) * h > 0:
+                time = ceiling
+            if after_stage is not None:
+                self._replace(self.new_flat if last else self.stage, after_stage(time, view))
+            evaluate(time, view, row)
+        self.calls += self.stages - 1
+        if self.first_same_as_last:
+            return
+        if self.compensated:
+            self._combine_compensated()
+        else:
+            dot = self.final_dot
+            for prefix, out in self.final_parts:
+                dot(prefix, out)
+        if after_stage is not None:
+            self._replace(self.new_flat, after_stage(t + h, self.new))
+
+    def _combine_compensated(self) -> None:
+        dot, slab, rates, scratch = self.increment_dot, self.slab, self.increment_rates, self.scratch
+        for cut in self.cuts:
+            state, new, lost = slab[0, cut], self.new_flat[cut], self.next_carry[cut]
+            increment = scratch[: len(state)]
+            dot(rates[:, cut], increment)
+            np.subtract(increment, self.carry[cut], increment)
+            np.add(state, increment, new)
+            np.subtract(new, state, lost)
+            np.subtract(lost, increment, lost)
+
+    def _replace(self, target: Array, given: Any) -> None:
+        if given is None:
+            return
+        array = np.asarray(given)
+        if array.shape != self.shape:
+            raise BadModel(
+                f"after_stage returned shape {array.shape}, and the state has shape {self.shape}\n"
+                "  Return an array of the state's shape, or None to leave it.",
+                argument="after_stage",
+            )
+        target[:] = array.reshape(-1)
+
+    def error_norm(self, rel_tol: float, abs_tol: Array, norm: Norm | None) -> float:
+        """Return the norm of the last attempt's error estimate (unitless; 1 is the tolerance; may be NaN).
+
+        `abs_tol` is an array of the state's size, flat, or of size 1. The default norm is the weighted root
+        mean square over all entries with scale abs_tol + rel_tol·max(|y_n|, |y_n+1|).
+        """
+        if norm is not None:
+            return float(norm(*self.error_and_scale(rel_tol, abs_tol)))
+        total = 0.0
+        dot, one = self.error_dot, abs_tol.size == 1
+        with np.errstate(all="ignore"):
+            for rates, state, new, cut in self.error_parts:
+                length = len(state)
+                error, quotient = self.scratch[:length], self.quotient[:length]
+                scale, other = self.scale_scratch[:, :length]
+                dot(rates, error)
+                np.abs(state, scale)
+                np.abs(new, other)
+                np.maximum(scale, other, scale)
+                np.multiply(scale, rel_tol, scale)
+                np.add(scale, abs_tol if one else abs_tol[cut], scale)
+                if error.dtype.kind == "c":
+                    np.abs(error, other)
+                    error = other
+                np.divide(error, scale, quotient)
+                total += float(quotient.dot(quotient))
+        return math.sqrt(total / self.new_flat.size)
+
+    def error_and_scale(self, rel_tol: float, abs_tol: Array) -> tuple[Array, Array]:
+        """Return the last attempt's error estimate and its scale, new arrays in the state's shape."""
+        error = self.work[self.stages + 1, 1:].dot(self.slab[1:])
+        with np.errstate(all="ignore"):
+            scale = abs_tol + rel_tol * np.maximum(np.abs(self.slab[0]), np.abs(self.new_flat))
+        return error.reshape(self.shape), scale.reshape(self.shape)
+
+    def new_is_finite(self) -> bool:
+        """Whether every entry of the new state is a number; a zero times it is then zero."""
+        if self.dtype == np.dtype(object):
+            return True
+        return all(self.zeros[: c.stop - c.start].dot(self.new_flat[c]) == 0 for c in self.cuts)
+
+    def accept(self) -> None:
+        """Make the new state the state; keep the rate at it where the last stage is the next first."""
+        self.slab[0] = self.new_flat
+        if self.compensated:
+            self.carry, self.next_carry = self.next_carry, self.carry
+        if self.first_same_as_last:
+            self.slab[1] = self.slab[self.stages]
+        else:
+            self.fresh = False
