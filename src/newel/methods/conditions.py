@@ -1,0 +1,237 @@
+"""Each order condition judged: by intervals first, by rounding bounds where digits are stated, by exact
+arithmetic only to confirm zeros.
+
+A condition of a formula whose coefficients are all exact holds when its residual is exactly zero. Where some
+carry a rounding, the residual r must satisfy |r| ≤ 2·Σ|∂r/∂x|·δ_x over the coefficients x, with δ_x half a
+unit in the last trusted digit, and |r| ≤ 1e-12: twice, because the bound is of first order; the cap, so that
+few stated digits never excuse a formula of lower order.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Sequence
+from fractions import Fraction
+from functools import cached_property
+from math import inf
+from typing import Any, Literal
+
+import attrs
+import numpy as np
+from numpy.typing import NDArray
+
+from newel.methods.elementary_weights import (
+    ElementaryWeights,
+    FixedPoint,
+    Interval,
+    Matrix,
+    Row,
+    ScaledIntegers,
+    ScaledSurds,
+)
+from newel.methods.exact import Exact
+from newel.methods.sensitivities import Sensitivities
+from newel.methods.trees import Tree, trees
+from newel.methods.verdict import Failure
+
+__all__ = ["LIMIT", "Conditions", "Formula", "Part", "allowed", "readable"]
+
+LIMIT = 1e-12
+"""The largest residual that rounded coefficients may leave, whatever digits are stated."""
+
+HANDFUL = 5
+LONGEST_EXACT = 48
+COSTLIEST_EXACT = 20_000
+
+
+@attrs.frozen(kw_only=True, eq=False)
+class Formula:
+    """One weight vector and what its conditions ask for.
+
+    `weights` holds s exact numbers and `slack` their δ, shape (s,). `power` is None for weights that belong
+    to the end of the step; k for the coefficients of θ^k, whose sums are 1/γ for trees of order k alone.
+    """
+
+    weights: Row
+    slack: NDArray[np.float64]
+    power: int | None = None
+
+    def target(self, tree: Tree) -> Fraction:
+        """Return what bᵀΦ(tree) should be."""
+        if self.power is None or self.power == tree.order:
+            return Fraction(1, tree.density)
+        return Fraction(0)
+
+    def condition(self, tree: Tree) -> str:
+        """Return the name of the condition."""
+        return tree.bracket if self.power is None else f"{tree.bracket} θ^{self.power}"
+
+
+@attrs.frozen(kw_only=True)
+class Part:
+    """The formulas that share one claim."""
+
+    name: Literal["weights", "embedded", "continuous"]
+    claimed: int
+    formulas: tuple[Formula, ...]
+
+
+class Conditions:
+    """The order conditions of one matrix, which may be any square one.
+
+    Args:
+        matrix: s rows of s exact numbers, all in one field Q(√d).
+        slack: their δ, shape (s, s), float64; zero where exact.
+        floats: the matrix in float64, shape (s, s).
+        radicand: d, or 1.
+        bits: binary digits of the fixed point arithmetic.
+        tick: called once for each tree that has been judged.
+    """
+
+    def __init__(
+        self,
+        matrix: Matrix,
+        slack: NDArray[np.float64],
+        floats: NDArray[np.float64],
+        radicand: int,
+        bits: int,
+        tick: Callable[[], None] = lambda: None,
+    ) -> None:
+        self.matrix, self.slack, self.radicand, self.tick = matrix, slack, radicand, tick
+        self.arithmetic = FixedPoint(matrix, bits)
+        self.fixed = ElementaryWeights(self.arithmetic)
+        self.sensitivities = Sensitivities(floats)
+        self.rounded_matrix = bool(slack.any())
+        self._exact_vectors: dict[Formula, Any] = {}
+
+    @cached_property
+    def exact(self) -> ElementaryWeights[Any]:
+        """The same weights in exact arithmetic, made when the first zero is to be confirmed."""
+        if self.radicand == 1:
+            return ElementaryWeights(ScaledIntegers(self.matrix))
+        return ElementaryWeights(ScaledSurds(self.matrix, self.radicand))
+
+    def proven_order(self, part: Part) -> tuple[int, list[Failure]]:
+        """Return the order up to which a part holds, and the failures of the next if that was claimed.
+
+        Goes on past the claim until a condition fails. No formula of s stages is of higher order than 2·s.
+        """
+        order = 1
+        while order <= 2 * len(self.matrix):
+            failures = self._failures(part, order, HANDFUL if order <= part.claimed else 1)
+            if failures:
+                return order - 1, failures if order <= part.claimed else []
+            order += 1
+        return order - 1, []
+
+    def _failures(self, part: Part, order: int, most: int) -> list[Failure]:
+        failures: list[Failure] = []
+        doubtful: list[tuple[int, Tree, Interval]] = []
+        vectors = [self.arithmetic.vector(formula.weights) for formula in part.formulas]
+        for tree in trees(order):
+            stages = self.fixed.stages(tree.index)
+            for which, formula in enumerate(part.formulas):
+                residual = self.arithmetic.residual(vectors[which], stages, formula.target(tree))
+                rounded = self.rounded_matrix or bool(formula.slack.any())
+                if residual.excludes_zero and (not rounded or residual.least > LIMIT):
+                    bound = LIMIT if rounded else 0.0
+                    failures.append(self._failure(part, formula, tree, float(residual), bound))
+                elif rounded or not residual.excludes_zero:
+                    doubtful.append((which, tree, residual))
+            self.tick()
+            if len(failures) >= most:
+                return failures[:most]
+        # A condition that intervals disprove has decided this order; the rest is not worth exact arithmetic.
+        return failures or list(self._doubtful_failures(part, order, doubtful))[:most]
+
+    def _doubtful_failures(
+        self, part: Part, order: int, doubtful: Sequence[tuple[int, Tree, Interval]]
+    ) -> Iterator[Failure]:
+        bounds = self._rounding_bounds(part, order) if doubtful else {}
+        for which, tree, interval in doubtful:
+            formula = part.formulas[which]
+            bound = bounds.get((which, tree.index), 0.0)
+            if interval.magnitude <= bound:
+                continue
+            if interval.excludes_zero or abs(self.exact_residual(formula, tree)) > Fraction(bound):
+                yield self._failure(part, formula, tree, float(interval), bound)
+
+    def _rounding_bounds(self, part: Part, order: int) -> dict[tuple[int, int], float]:
+        """Return the largest residual to accept, by formula and tree; without any rounding, none."""
+        slacks = np.array([formula.slack for formula in part.formulas])
+        if not (self.rounded_matrix or slacks.any()):
+            return {}
+        weights = np.array([[float(x) for x in formula.weights] for formula in part.formulas])
+        bounds = {}
+        with np.errstate(all="ignore"):
+            for piece in self.sensitivities.in_pieces(trees(order), len(weights)):
+                by_weights = slacks @ np.abs(self.sensitivities.stage_vectors(piece)).T
+                gradients = np.abs(self.sensitivities.matrix_gradients(piece, weights))
+                total = by_weights + np.tensordot(gradients, self.slack, axes=2)
+                for which, row in enumerate(total.tolist()):
+                    for tree, value in zip(piece, row, strict=True):
+                        bounds[which, tree.index] = allowed(value)
+        return bounds
+
+    def exact_residual(self, formula: Formula, tree: Tree) -> Exact:
+        """Return the residual in exact arithmetic."""
+        arithmetic: Any = self.exact.arithmetic
+        if formula not in self._exact_vectors:
+            self._exact_vectors[formula] = arithmetic.vector(formula.weights)
+        stages = self.exact.stages(tree.index)
+        residual: Exact = arithmetic.residual(
+            self._exact_vectors[formula], tree, stages, formula.target(tree)
+        )
+        return residual
+
+    def _failure(self, part: Part, formula: Formula, tree: Tree, residual: float, bound: float) -> Failure:
+        text = f"{residual:.4g}"
+        exact: Any = self.exact.arithmetic
+        if not bound and exact.denominator.bit_length() * tree.order < COSTLIEST_EXACT:
+            text = readable(self.exact_residual(formula, tree))
+        condition = formula.condition(tree)
+        explained = f", of which the stated digits explain {bound:.2g}" if bound else ""
+        message = (
+            f"{part.name}: {condition} of order {tree.order} should give {formula.target(tree)} "
+            f"and is off by {text}{explained}"
+        )
+        return Failure(
+            part=part.name,
+            condition=condition,
+            residual=residual,
+            residual_text=text,
+            bound=bound,
+            message=message,
+        )
+
+
+def allowed(first_order_bound: float) -> float:
+    """Return the largest residual to accept for a first-order rounding bound.
+
+    >>> allowed(3e-17), allowed(1.0)
+    (6e-17, 1e-12)
+    """
+    return min(2 * first_order_bound, LIMIT) if first_order_bound < inf else LIMIT
+
+
+def readable(value: Exact) -> str:
+    """Return an exact number as it was printed or exactly where that is short, else four digits of it.
+
+    >>> readable(Exact.of("0.25")), readable(Exact.of(1) / 3**40)
+    ('0.25', '1/12157665459056928801')
+    """
+    text = value.text or (value.canonical if _short(value) else "")
+    if text and len(text) <= LONGEST_EXACT:
+        return text
+    if not value or abs(value) > Fraction(1, 10**300):
+        return f"{float(value):.4g}" if abs(value) < 10**300 else "more than 1e300"
+    return "less than 1e-300, but not zero"
+
+
+def _short(value: Exact) -> bool:
+    parts = (
+        value.rational.numerator,
+        value.rational.denominator,
+        value.surd.numerator,
+        value.surd.denominator,
+    )
+    return max(part.bit_length() for part in parts) <= 4 * LONGEST_EXACT
