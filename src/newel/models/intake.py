@@ -145,8 +145,8 @@ def _copy_tuple(value: Any, path: str, kept: list[str], seen: dict[int, Any]) ->
 
 def _copy_fields(value: Any, path: str, kept: list[str], seen: dict[int, Any]) -> Any:
     # Made without __init__: a class may check or convert there what it was once given in another form.
-    kind: type[Any] = type(value)
-    fresh = seen[id(value)] = object.__new__(kind)
+    make: Any = type(value).__new__
+    fresh = seen[id(value)] = make(type(value))
     for name in _field_names(value):
         object.__setattr__(fresh, name, _copy(getattr(value, name), f"{path}.{name}", kept, seen))
     return fresh

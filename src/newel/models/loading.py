@@ -71,7 +71,7 @@ def _parted(text: str) -> tuple[str, str]:
     """Return what stands before and after the colon, or raise for what cannot name a model."""
     if text.endswith(".toml"):
         raise bad("model", f"{text} is a tableau, not a model.", f"For a tableau: newel check {text}")
-    if Path(text).is_dir():
+    if text and Path(text).is_dir():
         raise bad("model", f"{text} is a folder, not a model.", FORMS)
     place, colon, name = text.rpartition(":")
     if text.endswith(".py") or not colon:
@@ -80,7 +80,7 @@ def _parted(text: str) -> tuple[str, str]:
         raise bad("model", f"{text!r}: {name!r} is no name of a thing in Python.", FORMS)
     if place.endswith(".py") or (name and DOTTED.fullmatch(place)):
         return place, name
-    if Path(text).exists():
+    if text and Path(text).exists():
         raise bad("model", f"{text} is no Python file: its name does not end in .py.", FORMS)
     raise bad("model", f"{text!r} names no model.", FORMS)
 

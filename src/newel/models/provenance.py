@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import functools
 import hashlib
-import importlib.metadata
+import importlib
 import inspect
 import os
 import platform
@@ -35,13 +35,10 @@ def source_file(function: Any) -> Path | None:
     while isinstance(function, functools.partial):
         function = function.func
     function = inspect.unwrap(getattr(function, "__func__", function))
-    if not hasattr(function, "__code__") and not isinstance(function, type):
-        function = type(function)
-    try:
-        path = Path(inspect.getfile(function))
-    except (TypeError, OSError):
-        return None
-    return path if path.is_file() else None
+    own_call = vars(type(function)).get("__call__")
+    code = getattr(function, "__code__", None) or getattr(own_call, "__code__", None)
+    path = None if code is None else Path(code.co_filename)
+    return path if path is not None and path.is_file() else None
 
 
 def model_origin(model: Model) -> dict[str, Any]:
@@ -77,12 +74,8 @@ def machine() -> dict[str, str]:
 
 @functools.cache
 def _versions() -> dict[str, str]:
-    try:
-        own = importlib.metadata.version("newel")
-    except importlib.metadata.PackageNotFoundError:
-        own = "not installed"
     return {
-        "newel": own,
+        "newel": str(importlib.import_module("newel").__version__),
         "python": platform.python_version(),
         "numpy": np.__version__,
         "blas": _blas(),
