@@ -225,7 +225,7 @@ def _trust(key: Any, value: Any) -> Trust:
         return "exact"
     if isinstance(value, int) and not isinstance(value, bool) and 1 <= value <= MOST_STATED:
         return int(value)
-    kind = "an integer" if key is None else 'an integer, or "exact",'
+    kind = "an integer" if key is None else '"exact" or an integer'
     raise BadTableau(
         f"{shown(value)} is no number of digits\n"
         f"  Write {kind} from 1 to {MOST_STATED}: the significant digits that are to be trusted.",

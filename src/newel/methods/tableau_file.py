@@ -11,6 +11,7 @@ import secrets
 import stat
 from collections.abc import Mapping
 from difflib import get_close_matches
+from math import isfinite
 from pathlib import Path
 from typing import Any
 
@@ -23,19 +24,24 @@ __all__ = ["MOST_BYTES", "SCHEMA", "format_tableau", "load_tableau", "parse_tabl
 
 MOST_BYTES = 2 * 1024 * 1024
 
-_REQUIRED = ("schema", "slug", "name", "source", "numbers", "order", "matrix", "weights")
 _KNOWN = {
-    "": (*_REQUIRED, "also_called", "authors", "year", "nodes", "digits", "embedded", "continuous", "notes"),
+    "": (
+        *("schema", "slug", "name", "also_called", "authors", "year", "source", "numbers"),
+        *("order", "nodes", "matrix", "weights", "digits", "embedded", "continuous", "notes"),
+    ),
     "embedded": ("order", "weights"),
     "continuous": ("order", "weights"),
     "notes": NOTE_KEYS,
 }
-_WRITTEN_FOR = {
-    "order": "the claimed order of the weights: order = 4",
-    "matrix": 'one row a stage, the first is empty: matrix = [[], ["1/2"]]',
-    "weights": 'one a stage: weights = ["0", "1"]',
+_TO_WRITE = {
+    "schema": f'as the first line: schema = "{SCHEMA}"',
+    "slug": 'the file\'s name without .toml: slug = "my-method-3"',
+    "name": 'the usual name: name = "…"',
     "source": 'where the numbers stand, as a citation: source = "…"',
-    "numbers": 'how they reached the file: numbers = "published", "derived" or "from memory"',
+    "numbers": 'how the numbers came here: numbers = "published", "derived" or "from memory"',
+    "order": "the claimed order of the weights: order = 4",
+    "matrix": 'a row for each stage, the first one empty: matrix = [[], ["1/2"]]',
+    "weights": 'a number for each stage: weights = ["0", "1"]',
 }
 
 
@@ -187,16 +193,15 @@ def _misread(message: str, text: str) -> BadTableau:
         return BadTableau(f"at the end of the file: {what}\n  A bracket or a quotation mark is left open.")
     line, column = int(found[1]), int(found[2])
     printed = text.split("\n")[line - 1].strip()
-    return BadTableau(
-        f"line {line}, column {column}: {message[: found.start()]}\n"
-        f'  {shown(printed)}\n  In TOML, texts and numbers stand in quotation marks: ["0", "1/2"].'
-    )
+    hint = 'Texts and numbers stand in quotation marks: ["0", "1/2"].'
+    if re.search("overwrite|declare|mutate", message):
+        hint = "A key or table stands once in a file."
+    what = f"line {line}, column {column}: {message[: found.start()]}"
+    return BadTableau(f"{what}\n  {shown(printed)}\n  {hint}")
 
 
 def _check_keys(data: Mapping[str, Any]) -> None:
-    if "schema" not in data:
-        raise BadTableau(f'missing; the file begins with schema = "{SCHEMA}"', key="schema")
-    if data["schema"] != SCHEMA:
+    if data.get("schema", SCHEMA) != SCHEMA:
         raise BadTableau(f'{shown(data["schema"])}; this newel reads "{SCHEMA}"', key="schema")
     for key in data:
         _check_known(key, "")
@@ -206,9 +211,9 @@ def _check_keys(data: Mapping[str, Any]) -> None:
             raise BadTableau(f"{shown(value)} is no table; write [{table}] on a line of its own", key=table)
         for key in value:
             _check_known(key, table)
-    for key in _REQUIRED:
+    for key, words in _TO_WRITE.items():
         if key not in data:
-            raise BadTableau(f"missing; {_WRITTEN_FOR.get(key, f'every file states its {key}')}", key=key)
+            raise BadTableau(f"missing; write {words}", key=key)
 
 
 def _check_known(key: str, table: str) -> None:
@@ -225,9 +230,8 @@ def _check_known(key: str, table: str) -> None:
 def _strings(value: Any, key: str) -> Any:
     """Return `value` as it is, having found no TOML float in it: those have lost their digits already."""
     if isinstance(value, float):
-        raise BadTableau(
-            f'{value!r} stands without quotation marks; write it as a string: "{value!r}"', key=key
-        )
+        remedy = f'write it as a string: "{value!r}"' if isfinite(value) else "a coefficient is finite"
+        raise BadTableau(f"{value!r} stands without quotation marks; {remedy}", key=key)
     if isinstance(value, list):
         for i, item in enumerate(value, 1):
             _strings(item, f"{key}[{i}]")

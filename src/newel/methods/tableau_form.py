@@ -139,7 +139,9 @@ def square(matrix: tuple[Row, ...], s: int) -> tuple[Row, ...]:
         raise BadTableau(f"{s} weights; a tableau has from 1 to {MOST_STAGES} stages", key="weights")
     if len(matrix) != s:
         first = "; the first stage has a row too: []" if len(matrix) == s - 1 else ""
-        raise BadTableau(f"{len(matrix)} rows, but {s} weights; write one a stage{first}", key="matrix")
+        raise BadTableau(
+            f"{_counted(matrix, 'row', 'rows')}, but {s} weights; write one a stage{first}", key="matrix"
+        )
     for i, line in enumerate(matrix, 1):
         _check_row(line, i, s)
     return tuple(line + (ZERO,) * (s - len(line)) for line in matrix)
@@ -163,7 +165,7 @@ def check_shapes(tableau: Tableau) -> None:
     of_stages = {"nodes": tableau.nodes, "embedded.weights": tableau.embedded_weights}
     for key, line in of_stages.items():
         if line is not None and len(line) != s:
-            raise BadTableau(f"{len(line)} entries; {s} are needed, one a stage", key=key)
+            raise BadTableau(f"{_counted(line)}; {s} are needed, one a stage", key=key)
     _check_claim("embedded", tableau.embedded_weights, tableau.embedded_order)
     _check_claim("continuous", tableau.continuous_weights, tableau.continuous_order)
     if tableau.embedded_weights == tableau.weights:
@@ -184,9 +186,8 @@ def _check_claim(part: str, weights: object, claimed: int | None) -> None:
 def _check_row(line: Row, i: int, s: int) -> None:
     if len(line) not in (i - 1, s):
         reach = " with the diagonal" if len(line) == i else ""
-        entries = "1 entry" if len(line) == 1 else f"{len(line)} entries"
         raise BadTableau(
-            f"{entries}{reach}; write the {i - 1} left of the diagonal, or all {s}\n"
+            f"{_counted(line)}{reach}; write the {i - 1} left of the diagonal, or all {s}\n"
             "  newel is for explicit methods, with zeros on and above the diagonal.",
             key=f"matrix[{i}]",
         )
@@ -203,18 +204,23 @@ def _check_row(line: Row, i: int, s: int) -> None:
 def _check_continuous(lines: tuple[Row, ...], s: int) -> None:
     key = "continuous.weights"
     if len(lines) != s:
-        raise BadTableau(f"{len(lines)} rows; {s} are needed, one a stage", key=key)
+        raise BadTableau(f"{_counted(lines, 'row', 'rows')}; {s} are needed, one a stage", key=key)
     width = len(lines[0])
     if not 1 <= width <= 64:
         raise BadTableau(
-            f"{width} coefficients; write from 1 to 64, those of theta, theta^2, …", key=f"{key}[1]"
+            f"{_counted(lines[0])}; write from 1 to 64, the coefficients of theta, theta^2, …",
+            key=f"{key}[1]",
         )
     for i, line in enumerate(lines, 1):
         if len(line) != width:
             raise BadTableau(
-                f"{len(line)} coefficients, but {width} in the first row; fill up with zeros",
+                f"{_counted(line)}, but {width} in the first row; fill up with zeros",
                 key=f"{key}[{i}]",
             )
+
+
+def _counted(items: tuple[Any, ...], one: str = "entry", many: str = "entries") -> str:
+    return f"{len(items)} {one if len(items) == 1 else many}"
 
 
 def _bits(part: Fraction) -> int:
