@@ -6,6 +6,7 @@ The matrix may be any square one here, so that a permutation of the stages can b
 from __future__ import annotations
 
 from collections.abc import Sequence
+from math import inf
 from typing import TYPE_CHECKING, Any
 
 import attrs
@@ -24,7 +25,7 @@ __all__ = ["Coefficients"]
 
 Floats = NDArray[np.float64]
 LEAST_BITS = 256
-LARGEST = 10**100
+LARGEST = 1e100
 
 
 def _row(values: Sequence[ExactLike]) -> Row:
@@ -43,7 +44,7 @@ def _optional_rows(values: Sequence[Sequence[ExactLike]] | None) -> Matrix | Non
     return None if values is None else _rows(values)
 
 
-@attrs.frozen(kw_only=True, slots=False, eq=False)
+@attrs.frozen(kw_only=True, eq=False)
 class Coefficients:
     """Arrays and claims to be proved, without a name; every number is unitless.
 
@@ -74,6 +75,8 @@ class Coefficients:
     continuous: Matrix | None = attrs.field(default=None, converter=_optional_rows)
     continuous_order: int | None = None
     half_units: dict[str, Any] = attrs.field(factory=dict)
+    _floats: dict[str, Floats] = attrs.field(factory=dict, init=False)
+    _slacks: dict[str, Floats] = attrs.field(factory=dict, init=False)
 
     @classmethod
     def of(cls, tableau: Tableau) -> Coefficients:
@@ -99,17 +102,22 @@ class Coefficients:
 
     def floats(self, name: str) -> Floats:
         """Return an array in float64, each entry rounded correctly."""
-        if any(abs(x) > LARGEST for x in _flat(self.array(name))):
-            raise BadTableau("a number beyond 1e100, which no float64 proof can follow", key=name)
-        return _nested_floats(self.array(name))
+        if name not in self._floats:
+            try:
+                self._floats[name] = _nested_floats(self.array(name))
+            except OverflowError:
+                self._floats[name] = np.array([inf])
+            if np.abs(self._floats[name]).max(initial=0.0) > LARGEST:
+                raise BadTableau("a number beyond 1e100, which no float64 proof can follow", key=name)
+        return self._floats[name]
 
     def slack(self, name: str) -> Floats:
         """Return the half units δ of an array in float64, zero where exact."""
-        if not self.half_units.get(name):
-            values = self.array(name)
+        if name not in self._slacks:
+            given, values = self.half_units.get(name), self.array(name)
             width = () if not values or isinstance(values[0], Exact) else (len(values[0]),)
-            return np.zeros((len(values or ()), *width))
-        return _nested_floats(self.half_units[name])
+            self._slacks[name] = _nested_floats(given) if given else np.zeros((len(values or ()), *width))
+        return self._slacks[name]
 
     @property
     def rounded(self) -> bool:
@@ -142,9 +150,13 @@ class Coefficients:
             slack = self.slack("embedded")
             parts.append(_part("embedded", self.embedded_order or 0, [self.embedded], [slack]))
         if self.continuous is not None:
-            columns = list(zip(*self.continuous, strict=True))
-            slacks = self.slack("continuous")
-            parts.append(_part("continuous", self.continuous_order or 0, columns, list(slacks.T)))
+            claimed = self.continuous_order or 0
+            columns, slacks = list(zip(*self.continuous, strict=True)), list(self.slack("continuous").T)
+            # Powers of θ that the claim needs and the weights lack are there with zeros, to be found wanting.
+            while len(columns) < claimed:
+                columns.append((Exact(0),) * len(self.weights))
+                slacks.append(np.zeros(len(self.weights)))
+            parts.append(_part("continuous", claimed, columns, slacks))
         return parts
 
 

@@ -113,10 +113,13 @@ class Conditions:
     def proven_order(self, part: Part) -> tuple[int, list[Failure]]:
         """Return the order up to which a part holds, and the failures of the next if that was claimed.
 
-        Goes on past the claim until a condition fails. No formula of s stages is of higher order than 2·s.
+        Goes on past the claim until a condition fails. No formula of s stages is of higher order than 2·s,
+        and no polynomial in θ of higher order than its degree.
         """
-        order = 1
-        while order <= 2 * len(self.matrix):
+        order, highest = 1, 2 * len(self.matrix)
+        if part.name == "continuous":
+            highest = min(highest, len(part.formulas))
+        while order <= highest:
             failures = self._failures(part, order, HANDFUL if order <= part.claimed else 1)
             if failures:
                 return order - 1, failures if order <= part.claimed else []
@@ -152,8 +155,11 @@ class Conditions:
             bound = bounds.get((which, tree.index), 0.0)
             if interval.magnitude <= bound:
                 continue
-            if interval.excludes_zero or abs(self.exact_residual(formula, tree)) > Fraction(bound):
-                yield self._failure(part, formula, tree, float(interval), bound)
+            if not interval.excludes_zero:
+                residual = self.exact_residual(formula, tree)
+                if not residual or abs(residual) <= Fraction(bound):
+                    continue
+            yield self._failure(part, formula, tree, float(interval), bound)
 
     def _rounding_bounds(self, part: Part, order: int) -> dict[tuple[int, int], float]:
         """Return the largest residual to accept, by formula and tree; without any rounding, none."""
@@ -189,10 +195,10 @@ class Conditions:
         if not bound and exact.denominator.bit_length() * tree.order < COSTLIEST_EXACT:
             text = readable(self.exact_residual(formula, tree))
         condition = formula.condition(tree)
-        explained = f", of which the stated digits explain {bound:.2g}" if bound else ""
+        accepted = f"; the stated digits excuse {bound:.2g}" if bound else ""
         message = (
             f"{part.name}: {condition} of order {tree.order} should give {formula.target(tree)} "
-            f"and is off by {text}{explained}"
+            f"and is off by {text}{accepted}"
         )
         return Failure(
             part=part.name,

@@ -82,7 +82,7 @@ def prove_coefficients(
             failures.append(_claim(part, orders[part.name]))
     return Verdict(
         outcome="fails" if failures else "rounded" if coefficients.rounded else "exact",
-        digits=digits,
+        digits=digits if coefficients.rounded else None,
         order=orders["weights"],
         embedded_order=orders.get("embedded"),
         continuous_order=orders.get("continuous"),
@@ -143,6 +143,7 @@ def _row_sums(coefficients: Coefficients) -> Iterator[Failure]:
         bound = allowed(float(slack[stage - 1]))
         if abs(total - node) > Fraction(bound):
             message = f"row {stage}: the node is {readable(node)}, the sum of the row is {readable(total)}"
+            message += _by_how_much(total - node, bound)
             yield _failure("row sum", f"row {stage}", total - node, bound, message)
 
 
@@ -157,7 +158,13 @@ def _ends(coefficients: Coefficients) -> Iterator[Failure]:
         bound = allowed(float(slack[stage - 1]))
         if abs(total - weight) > Fraction(bound):
             message = f"continuous: stage {stage} sums to {readable(total)}, its weight is {readable(weight)}"
+            message += _by_how_much(total - weight, bound)
             yield _failure("continuous", f"end of the step, stage {stage}", total - weight, bound, message)
+
+
+def _by_how_much(residual: Exact, bound: float) -> str:
+    accepted = f", and the stated digits excuse {bound:.2g}" if bound else ""
+    return f"; they differ by {float(residual):.3g}{accepted}"
 
 
 def _failure(
