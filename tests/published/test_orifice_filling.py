@@ -16,6 +16,7 @@ import math
 import numpy as np
 import pytest
 
+import newel
 from newel.examples.lock import (
     HEAD_AT_OPENING,
     Lock,
@@ -134,3 +135,31 @@ def test_the_model_has_units_breaks_and_one_event_that_ends():
 def test_settings_out_of_range_are_refused(settings, words):
     with pytest.raises(ValueError, match=words):
         model(**settings)
+
+
+@pytest.mark.parametrize("settings", [{}, {"paddle": 0.6}, {"gate_at": 143.3}, {"lift": 12.0}])
+def test_an_adaptive_march_finds_the_levels_and_the_time_of_opening(settings):
+    """The errors of levels, volume and time of opening stay near the tolerance."""
+    lock = Lock(**settings)
+    for tolerance, allowed in ((1e-6, 1e-3), (1e-9, 5e-6), (1e-12, 5e-9)):
+        run = newel.march(model(**settings), "dormand-prince-5-4", rel_tol=tolerance, abs_tol=tolerance)
+        assert (run.ended.reason, run.ended.label) == ("event", "gates may be opened")
+        assert run.last_time == pytest.approx(gates_open_at(lock), abs=allowed)
+        assert np.abs(run.states - closed_form(run.times, lock)).max() < allowed
+        assert head(run.last_state) == pytest.approx(HEAD_AT_OPENING, abs=1e-9)
+        assert [event.label for event in run.events] == ["gates may be opened"]
+
+
+@pytest.mark.parametrize("gate_at", [150.0, 143.3])
+def test_breaks_keep_the_order_of_fixed_steps_across_a_paddle_that_drops_open(gate_at):
+    """Halving the step divides the error by 16 with breaks, on the grid and off it, and by 2 without them."""
+    lock = Lock(gate_at=gate_at)
+    split = model(gate_at=gate_at, stop=200.0)
+
+    def worst(marched, step):
+        run = newel.march(marched, "kutta-4", step=step)
+        return np.abs(run.states - closed_form(run.times, lock)).max()
+
+    assert worst(split, 10.0) / worst(split, 1.25) == pytest.approx(16.0**3, rel=0.15)
+    blind = split.replace(breaks=())
+    assert worst(blind, 1.25) > 1e6 * worst(split, 1.25)
