@@ -51,7 +51,7 @@ CLAIMS = (
     Claim("england-5-4", "England 1969", 5, "7.360752961e-03", 4, "1.313032667e-02"),
     Claim("fehlberg-5-4", "Fehlberg 1969", 5, "3.355744693e-03", 4, "1.839243418e-03"),
     Claim("fehlberg-5-6", "Fehlberg 1968", 5, "6.691198577e-04", 6, "1.192300077e-03"),
-    Claim("fehlberg-first-5-4", "Fehlberg 1969", 5, "1.448108938e-03", 4, "3.078573166e-03"),
+    Claim("fehlberg-formula-one-5-4", "Fehlberg 1969", 5, "1.448108938e-03", 4, "3.078573166e-03"),
     Claim("higham-hall-5-4", "Higham & Hall 1990", 5, "1.797083638e-03", 4, "2.043078163e-03"),
     Claim("kutta-5", "Kutta 1901", 5, "4.043299594e-03"),
     Claim("lawson-5", "Lawson 1966", 5, "1.480791850e-03"),
