@@ -162,7 +162,7 @@ _ALL = (
     Orbit(
         "pleiades",
         "seven stars in a plane, with close encounters",
-        "E. Hairer, S. P. Norsett, G. Wanner, Solving Ordinary Differential Equations I, section II.10 (starting "
+        "E. Hairer, S. P. Norsett, G. Wanner, Solving Ordinary Differential Equations I, II.10 (starting "
         "data seen; its 16 digits of the state at t = 3, from memory, agree with the values here to 1.8e-15)",
         _pleiades,
         {
