@@ -33,7 +33,7 @@ class Outlet:
     """One sink, how far it has got, and whether it can go on."""
 
     def __init__(self, sink: Sink) -> None:
-        self.sink = sink
+        self.sink: Any = sink
         self.rows = 0
         self.safe_time: float | None = None
         self.opened = self.failed = False
@@ -137,9 +137,11 @@ class Feed:
         self._pending = False
         self._filled = 0
         self._capacity = self._block
+        self._limited: list[Outlet] = []
 
     def begin(self) -> None:
         """Set the length of the first block, once the sinks are open."""
+        self._limited = [outlet for outlet in self.outlets if getattr(outlet.sink, "room", None) is not None]
         self._capacity = max(1, min(self._block, self._room()))
 
     def take(self, time: float, state: Array, event: str) -> None:
@@ -212,12 +214,14 @@ class Feed:
 
     def _room(self) -> int:
         """The rows that still fit into the sinks that say so."""
-        rooms = [getattr(outlet.sink, "room", None) for outlet in self.outlets if not outlet.failed]
-        return min((room for room in rooms if room is not None), default=self._block)
+        if not self._limited:
+            return self._block
+        return min(
+            (int(outlet.sink.room) for outlet in self._limited if not outlet.failed), default=self._block
+        )
 
     def _limit(self) -> int:
-        full = [outlet.sink for outlet in self.outlets if getattr(outlet.sink, "room", None) == 0]
-        return min((int(getattr(sink, "limit", 0)) for sink in full), default=0)
+        return min((int(getattr(outlet.sink, "limit", 0)) for outlet in self._limited), default=0)
 
 
 def _sealed(array: Array) -> Array:

@@ -171,7 +171,8 @@ class Memory:
         count = min(len(times), len(chunk_times) - start)
         chunk_times[start : start + count] = times[:count]
         chunk_states[start : start + count] = states[:count]
-        self._labels |= {self._kept + i: label for i, label in enumerate(events[:count]) if label}
+        if any(events):
+            self._labels |= {self._kept + i: label for i, label in enumerate(events[:count]) if label}
         self._filled += count
         self._kept += count
         return count
