@@ -12,16 +12,15 @@ from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
-from newel.methods.order_conditions import PROOF_VERSION, proof_key, prove
-
 from newel.catalogue.proofs import LIST_SCHEMA
 from newel.catalogue.summaries import entry_of
 from newel.errors import NewelError
+from newel.methods.order_conditions import PROOF_VERSION, proof_key, prove
 from newel.methods.tableau_file import load_tableau
 
 DATA = Path(__file__).parents[1] / "tableaux"
 LIST = DATA / "proved.toml"
-HEAD = "# Written by `python -m tests.prove_tableaux` after a full proof of every file. Not to be edited by hand.\n"
+HEAD = "# Written by `python -m tests.prove_tableaux` after a full proof of every file; not edited by hand.\n"
 
 
 def prove_all(folder: Path) -> tuple[list[dict[str, Any]], list[str]]:

@@ -90,15 +90,15 @@ def call_with(factory: Callable[..., Any], what: str, arguments: dict[str, Any])
         BadRequest: if the arguments do not fit its signature.
     """
     try:
-        signature = inspect.signature(factory)
+        signature: inspect.Signature | None = inspect.signature(factory)
     except (TypeError, ValueError):
-        return factory(**arguments)
+        signature = None
     try:
-        signature.bind(**arguments)
+        return factory(**arguments)
     except TypeError as error:
         given = ", ".join(f"{name}={value!r}" for name, value in arguments.items()) or "no arguments"
-        raise BadRequest(f"{what}: {error}; given {given}\n  It takes {signature}.") from None
-    return factory(**arguments)
+        takes = "what its documentation says" if signature is None else signature
+        raise BadRequest(f"{what}: {error}; given {given}\n  It takes {takes}.") from error
 
 
 @cache

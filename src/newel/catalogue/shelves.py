@@ -96,7 +96,7 @@ class Shelves:
 
 def warn(problem: Problem) -> None:
     """Give the warning at the line outside newel that led to it."""
-    depth, frame = 1, sys._getframe(1)
+    depth, frame = 1, sys._getframe(0)
     while frame.f_back is not None and frame.f_code.co_filename.startswith(_PACKAGE):
         depth, frame = depth + 1, frame.f_back
     warnings.warn(problem.text, problem.category, stacklevel=depth)

@@ -19,9 +19,9 @@ def folded(name: str) -> str:
     return "".join(character for character in plain if character.isalnum())
 
 
-def near_names(name: str, known: Iterable[str], most: int = 3) -> tuple[str, ...]:
-    """Return the names closest to one, the closest first."""
-    return tuple(difflib.get_close_matches(name[:_LONGEST].lower(), list(known), n=most, cutoff=0.55))
+def near_names(name: str, known: Iterable[str], least: float = 0.55) -> tuple[str, ...]:
+    """Return the three names closest to one, the closest first; `least` is the ratio of letters in common."""
+    return tuple(difflib.get_close_matches(name[:_LONGEST].lower(), list(known), n=3, cutoff=least))
 
 
 def unknown_method(slug: str, known: Iterable[str], usual: Mapping[str, Iterable[str]]) -> UnknownMethod:
@@ -52,7 +52,10 @@ def _near_slugs(
 ) -> tuple[str, ...]:
     """Return near slugs: near to the method that is meant, else to the text, by slug or by usual name."""
     if owners:
-        return near_names(owners[0], [other for other in known if other not in owners])
+        author = owners[0].partition("-")[0] + "-"
+        others = [other for other in known if other not in owners]
+        kin = near_names(owners[0], [other for other in others if other.startswith(author)], least=0.0)
+        return tuple(dict.fromkeys([*kin, *near_names(owners[0], others)]))[:3]
     direct = near_names(slug, known)
     if len(direct) == 3:
         return direct

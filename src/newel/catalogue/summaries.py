@@ -69,7 +69,7 @@ _FROM_TABLEAU = (
 
 
 def entry_of(tableau: Tableau, key: str, file: bytes, verdict: Mapping[str, Any]) -> dict[str, Any]:
-    """Return what the list of proofs keeps of a built-in method: its key, summary and verdict, without Nones."""
+    """Return what the list of proofs keeps of a built-in method: key, summary and verdict, without Nones."""
     entry = {name: getattr(tableau, name) for name in _FROM_TABLEAU}
     entry = {name: list(value) if isinstance(value, tuple) else value for name, value in entry.items()}
     entry |= {"key": key, "file": hashlib.sha256(file).hexdigest(), "verdict": dict(verdict)}
@@ -87,8 +87,7 @@ def listed_summary(slug: str, file: object) -> Summary | None:
         known: dict[str, Any] = {name: entry.get(name) for name in _FROM_TABLEAU}
         known |= {name: tuple(entry[name]) for name in ("also_called", "authors")}
         verdict = entry["verdict"]
-        return Summary(
-            **known, outcome=verdict["outcome"], working_floor=verdict["working_floor"], origin="built-in"
-        )
-    except (OSError, KeyError, TypeError):
+        floor = float(verdict["working_floor"])
+        return Summary(**known, outcome=verdict["outcome"], working_floor=floor, origin="built-in")
+    except (OSError, KeyError, TypeError, ValueError):
         return None
