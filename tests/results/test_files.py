@@ -72,7 +72,9 @@ def test_they_keep_the_sink_contract_and_every_number_reads_back_the_same(tmp_pa
 
 def test_csv_has_a_row_of_names_shortest_digits_and_lines_that_end_as_rfc_4180_says(tmp_path):
     # RFC 4180, section 2, rule 1: CRLF ends each record.
-    text = written(Csv(tmp_path / "a.csv"), head_for(has_events=False), [0.0, 0.1], [[1.0, 1 / 3], [1e22, -5e-324]])
+    text = written(
+        Csv(tmp_path / "a.csv"), head_for(has_events=False), [0.0, 0.1], [[1.0, 1 / 3], [1e22, -5e-324]]
+    )
     assert text == "t,y[0],y[1]\r\n0.0,1.0,0.3333333333333333\r\n0.1,1e+22,-5e-324\r\n"
 
 
@@ -111,7 +113,9 @@ def test_csv_writes_nan_and_infinity_as_python_reads_them(tmp_path):
 
 def test_csv_of_object_states_holds_what_str_gives(tmp_path):
     states = np.array([[Fraction(1, 3)]], dtype=object)
-    text = written(Csv(tmp_path / "a.csv"), head_for((1,), object, False), np.array([Fraction(1, 2)], object), states)
+    text = written(
+        Csv(tmp_path / "a.csv"), head_for((1,), object, False), np.array([Fraction(1, 2)], object), states
+    )
     assert text == "t,y[0]\r\n1/2,1/3\r\n"
 
 
@@ -143,7 +147,9 @@ def no_constant(name):
 
 
 def test_json_lines_hold_nan_and_infinity_as_text_in_rows_and_head(tmp_path):
-    head = Head(("x", "v"), (), "s", (2,), np.dtype(float), False, {"largest": np.inf, "names": ("a", np.float64(2))})
+    head = Head(
+        ("x", "v"), (), "s", (2,), np.dtype(float), False, {"largest": np.inf, "names": ("a", np.float64(2))}
+    )
     text = written(JsonLines(tmp_path / "a.jsonl"), head, [0.0, 1.0], [[np.nan, -np.inf], [1.0, np.inf]])
     lines = [json.loads(line, parse_constant=no_constant) for line in text.splitlines()]
     assert lines[0]["settings"] == {"largest": "inf", "names": ["a", 2.0]}
@@ -152,7 +158,9 @@ def test_json_lines_hold_nan_and_infinity_as_text_in_rows_and_head(tmp_path):
 
 def test_json_lines_hold_entries_of_object_states_as_text(tmp_path):
     states = np.array([[Fraction(1, 3)]], dtype=object)
-    text = written(JsonLines(tmp_path / "a"), head_for((1,), object, False), np.array([Fraction(1, 2)], object), states)
+    text = written(
+        JsonLines(tmp_path / "a"), head_for((1,), object, False), np.array([Fraction(1, 2)], object), states
+    )
     assert text.splitlines()[1] == '["1/2","1/3"]'
 
 

@@ -36,7 +36,9 @@ def test_what_is_written_in_any_blocks_is_read_back_in_order(pieces):
     memory.close(STOP)
     want = np.concatenate([np.empty(0), *(times for times, _ in pieces)])
     assert np.array_equal(memory.times, want)
-    assert np.array_equal(memory.states, np.concatenate([np.empty((0, 2, 2)), *(states for _, states in pieces)]))
+    assert np.array_equal(
+        memory.states, np.concatenate([np.empty((0, 2, 2)), *(states for _, states in pieces)])
+    )
 
 
 def test_rows_are_right_across_many_pieces_of_different_sizes(monkeypatch):
@@ -160,7 +162,14 @@ def test_times_of_object_states_stay_exact():
 
 @pytest.mark.parametrize(
     ("count", "text"),
-    [(0, "0 bytes"), (1023, "1023 bytes"), (1024, "1.0 KiB"), (10 << 20, "10 MiB"), (4 << 30, "4.0 GiB"), (1 << 52, "4,096 TiB")],
+    [
+        (0, "0 bytes"),
+        (1023, "1023 bytes"),
+        (1024, "1.0 KiB"),
+        (10 << 20, "10 MiB"),
+        (4 << 30, "4.0 GiB"),
+        (1 << 52, "4,096 TiB"),
+    ],
 )
 def test_sizes_are_written_as_people_read_them(count, text):
     assert bytes_as_text(count) == text

@@ -23,7 +23,9 @@ def sure(check):
     return settings(deadline=None, derandomize=True, max_examples=100)(check)
 
 
-@pytest.mark.parametrize("make", [Memory, lambda **k: Csv("a", **k), lambda **k: JsonLines("a", **k), lambda **k: Call(print, **k)])
+@pytest.mark.parametrize(
+    "make", [Memory, lambda **k: Csv("a", **k), lambda **k: JsonLines("a", **k), lambda **k: Call(print, **k)]
+)
 def test_every_sink_has_the_three_ways_of_thinning(make):
     assert make().thinning == Thinning()
     assert make(at=[2, 1]).thinning == Thinning(at=(2.0, 1.0))
@@ -31,7 +33,9 @@ def test_every_sink_has_the_three_ways_of_thinning(make):
     assert make(every_time=0.5).thinning == Thinning(every_time=0.5)
 
 
-@pytest.mark.parametrize("at", [3, np.float64(3), np.array(3.0), [3], (3.0,), np.array([3]), iter([3.0]), {3}])
+@pytest.mark.parametrize(
+    "at", [3, np.float64(3), np.array(3.0), [3], (3.0,), np.array([3]), iter([3.0]), {3}]
+)
 def test_times_may_come_as_one_number_or_as_anything_that_can_be_gone_through(at):
     assert thinning(at=at) == Thinning(at=(3.0,))
 
