@@ -47,7 +47,7 @@ def head_for(shape: tuple[int, ...] = (2,), dtype: DTypeLike = float, has_events
     ('y[0]', 'y[1]')
     """
     labels = tuple(f"y[{','.join(map(str, index))}]" for index in np.ndindex(*shape))
-    about = {"method": "kutta-4", "digest": "0" * 64, "rule": "fixed", "step": 0.1}
+    about = {"method": "kutta-4", "digest": "0" * 64, "settings": {"steps": "fixed", "step": 0.1}}
     return Head(labels, ("m",) * len(labels), "s", shape, np.dtype(dtype), has_events, about)
 
 

@@ -137,7 +137,7 @@ def test_json_lines_begin_with_a_head_that_says_what_the_rows_are(tmp_path):
         "time_unit": "s",
         "shape": [2],
         "dtype": "float64",
-        "settings": {"rule": "fixed", "step": 0.1},
+        "settings": {"steps": "fixed", "step": 0.1},
     }
     assert lines[1:] == ['[0.0,1.0,2.0,"full"]']
 
@@ -148,7 +148,13 @@ def no_constant(name):
 
 def test_json_lines_hold_nan_and_infinity_as_text_in_rows_and_head(tmp_path):
     head = Head(
-        ("x", "v"), (), "s", (2,), np.dtype(float), False, {"largest": np.inf, "names": ("a", np.float64(2))}
+        ("x", "v"),
+        (),
+        "s",
+        (2,),
+        np.dtype(float),
+        False,
+        {"settings": {"largest": np.inf, "names": ("a", np.float64(2))}},
     )
     text = written(JsonLines(tmp_path / "a.jsonl"), head, [0.0, 1.0], [[np.nan, -np.inf], [1.0, np.inf]])
     lines = [json.loads(line, parse_constant=no_constant) for line in text.splitlines()]

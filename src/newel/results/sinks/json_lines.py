@@ -26,10 +26,10 @@ class JsonLines:
     """Writes rows to a file with one JSON value a line, in UTF-8.
 
     The first line is the head, an object with `schema` ("newel-rows/1"), `method`, `digest`, `columns`,
-    `labels`, `units`, `time_unit`, `shape`, `dtype` and `settings`. Each line after it is an array that goes
-    with `columns`: the time, the entries in C order, and the event's label where the model has events. NaN
-    and infinity are the texts "nan", "inf", "-inf"; times and entries of object states are texts. A complex
-    entry has two columns, `label.re` and `label.im`.
+    `labels`, `units`, `time_unit`, `shape`, `dtype`, and what else the march says about itself, such as
+    `settings`. Each line after it is an array that goes with `columns`: the time, the entries in C order, and
+    the event's label where the model has events. NaN and infinity are the texts "nan", "inf", "-inf"; times
+    and entries of object states are texts. A complex entry has two columns, `label.re` and `label.im`.
 
     Args:
         path: the file; a pipe or a device works too.
@@ -103,18 +103,17 @@ class JsonLines:
 
 
 def _head(head: Head) -> dict[str, Any]:
-    about = dict(head.about)
     return {
         "schema": "newel-rows/1",
-        "method": about.pop("method", None),
-        "digest": about.pop("digest", None),
+        "method": None,
+        "digest": None,
+        **head.about,
         "columns": columns(head),
         "labels": head.labels,
         "units": head.units,
         "time_unit": head.time_unit,
         "shape": head.shape,
         "dtype": head.dtype.name,
-        "settings": about,
     }
 
 
