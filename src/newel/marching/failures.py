@@ -18,6 +18,8 @@ if TYPE_CHECKING:
 __all__ = ["CannotGoOn", "blame", "kept", "not_finite", "outside"]
 
 _HOME = str(Path(__file__).resolve().parent.parent)
+# The modules that call the user's functions.
+_CALLERS = ("rate_call.py", "crossings.py", "pacing.py")
 
 
 class CannotGoOn(Exception):
@@ -71,25 +73,41 @@ def _spelled(value: Any) -> str:
     return "NaN" if math.isnan(value) else ("infinity" if value > 0 else "-infinity")
 
 
-def blame(error: BaseException, model: Model) -> str:
-    """Return `rate raised ZeroDivisionError: … (plant.py:22)` for what a user's function raised."""
+def blame(error: BaseException, model: Model) -> str | None:
+    """Return `rate raised ZeroDivisionError: … (plant.py:22)` for what a user's function raised.
+
+    None where no function of the user's was running: the error is newel's own, and shows itself as it is.
+    """
     frames = traceback.extract_tb(error.__traceback__)
-    own = [frame for frame in frames if not frame.filename.startswith(_HOME)]
-    place = ""
-    if own:
-        deepest = own[-1]
-        place = f" ({Path(deepest.filename).name}:{deepest.lineno})"
+    ours = [i for i, frame in enumerate(frames) if frame.filename.startswith(_HOME)]
+    deepest = ours[-1] if ours else -1
+    below = frames[deepest + 1 :]
+    if not below:
+        # A compiled function leaves no frame of its own.
+        calling = ours and Path(frames[deepest].filename).name in _CALLERS
+        return f"rate raised {_told(error)} ({where_defined(model.rate)})" if calling else None
+    own = next((frame for frame in reversed(below) if not _is_library(frame.filename)), below[0])
+    place = f"{Path(own.filename).name}:{own.lineno}"
+    return f"{_named(below, model)} raised {_told(error)} ({place})"
+
+
+def _told(error: BaseException) -> str:
+    text = str(error)
+    return f"{type(error).__name__}: {text}" if text else type(error).__name__
+
+
+def _is_library(filename: str) -> bool:
+    return "site-packages" in filename or filename.startswith("<__array_function__")
+
+
+def _named(frames: list[traceback.FrameSummary], model: Model) -> str:
     functions = [("rate", model.rate), ("after_step", model.after_step), ("after_stage", model.after_stage)]
     if callable(model.within):
         functions.append(("within", model.within))
     functions += [(f"the indicator of {event.label!r}", event.indicator) for event in model.events]
-    name = "a function of the model"
-    for called, function in functions:
+    for name, function in functions:
         code = getattr(function, "__code__", None)
-        if code is not None and any(f.filename == code.co_filename and f.name == code.co_name for f in own):
-            name = called
-            break
-    else:
-        if not own:
-            name, place = "rate", f" ({where_defined(model.rate)})"
-    return f"{name} raised {type(error).__name__}: {error}{place}"
+        first = frames[0]
+        if code is not None and (first.filename, first.name) == (code.co_filename, code.co_name):
+            return name
+    return "a function of the model"

@@ -25,7 +25,7 @@ from newel.stepping.numpy_step import NumpyStep
 from newel.stepping.rate_call import RateCall, where_defined
 from newel.stepping.rules import Adaptive, StepRule
 from newel.stepping.switching.crossings import Crossings
-from newel.stepping.switching.spacing import just_before, spacing
+from newel.stepping.switching.spacing import just_after, just_before, spacing
 
 if TYPE_CHECKING:
     from newel.methods.tableau import Tableau
@@ -52,6 +52,7 @@ class Saved:
     pace: Any
     signs: tuple[int, ...]
     break_index: int
+    floor: Any
     params: Any
     counters: tuple[int, int, int]
     events: int
@@ -112,7 +113,9 @@ class Loop:
         )
         self.breaks = breaks_inside(model)
         self.break_index = 0
+        self.wall: Any = self._break_ahead()
         self.crossings = Crossings(model.events, self.extra)
+        self.has_events, self.has_within = bool(model.events), model.within is not None
         self.pace = Pace() if self.adaptive else pace_of(rule, self.start, self.stop, self.extra)
         if self.pace.note:
             self.notes.append(Note(self.pace.note))
@@ -122,7 +125,9 @@ class Loop:
         step = self.step
         if not self._inside(step.state):
             raise BadModel(outside(self.model, step.state, self.time) + ", at the start", argument="within")
-        self.rate.first(self.time, step.state, step.rows[1])
+        if self.time in self.model.breaks and not self.exact_time:
+            step.floor = just_after(self.time, self.direction)
+        self.rate.first(self.time if step.floor is None else step.floor, step.state, step.rows[1])
         step.evaluate = self.rate.evaluate
         step.fresh = True
         step.calls += 1
@@ -141,10 +146,11 @@ class Loop:
 
     def _first_length(self, rule: Adaptive) -> float:
         assert self.limits is not None
-        rel_tol, abs_tol, norm, smallest, largest = self.limits
+        rel_tol, ratio, norm, smallest, largest = self.limits
         if rule.first is not None:
             return min(rule.first, largest)
-        span = abs(self._break_ahead() - self.time)
+        span = abs(self.wall - self.time)
+        abs_tol = ratio * rel_tol
         length = first_step(self.step, self.time, span, self.direction, self.order, rel_tol, abs_tol, norm)
         least = _FEWEST_SPACINGS * spacing(self.time)
         return min(max(length, smallest, least), largest)
@@ -152,6 +158,7 @@ class Loop:
     # One accepted step.
 
     def _break_ahead(self) -> Any:
+        """The next place that a step may not cross: a break, or stop."""
         return self.breaks[self.break_index] if self.break_index < len(self.breaks) else self.stop
 
     def advance(self, landing: float | None = None) -> str:
@@ -161,20 +168,18 @@ class Loop:
         else:
             t, h = self._paced_step(landing)
         label = ""
-        if self.crossings.events:
+        if self.has_events:
             t, label = self.switches.look(self, t, h)
         self._commit(t, restart=bool(label))
         return label
 
     def ceiling(self, t: Any) -> Any:
         """The last time before a break, for a step that ends on it."""
-        if self.break_index < len(self.breaks) and t == self.breaks[self.break_index]:
-            return just_before(t, self.direction)
-        return None
+        return just_before(t, self.direction) if t == self.wall and t != self.stop else None
 
     def _paced_step(self, landing: float | None) -> tuple[Any, Any]:
         ahead, h = self.pace.target(self.time, self.step.state)
-        wall: Any = self._break_ahead()
+        wall = self.wall
         if landing is not None and (landing - wall) * self.direction < 0:
             wall = landing
         if wall != ahead and not self.exact_time:
@@ -196,8 +201,8 @@ class Loop:
         controller, step, time = self.controller, self.step, self.time
         assert controller is not None
         assert self.limits is not None
-        rel_tol, abs_tol, norm, smallest, largest = self.limits
-        wall = self._break_ahead()
+        rel_tol, ratio, norm, smallest, largest = self.limits
+        wall = self.wall
         if landing is not None and (landing - wall) * self.direction < 0:
             wall = landing
         remaining = (wall - time) * self.direction
@@ -214,8 +219,8 @@ class Loop:
                 raise self._underflow(length, rejected_here)
             h = ahead - time
             step.attempt(time, h, self.ceiling(ahead) if lands else None)
-            error = step.error_norm(rel_tol, abs_tol, norm)
-            if not error < math.inf or not self._inside(step.new):
+            error = step.error_norm(rel_tol, ratio, norm)
+            if not error < math.inf or (self.has_within and not self._inside(step.new)):
                 quarterings += 1
                 self.rejected += 1
                 if quarterings == _MOST_QUARTERINGS:
@@ -266,18 +271,22 @@ class Loop:
 
     def _commit(self, t: Any, restart: bool) -> None:
         """Make the attempted step the state; a Ctrl-C in here is finished by `settle`."""
-        at_break = self._pass_breaks(t)
+        at_break = (t - self.wall) * self.direction >= 0 and self._pass_breaks(t)
         self.last_step = t - self.time
         self.pending = (t, self.accepted + 1)
         self.step.accept()
         self.time, self.accepted = self.pending
         self.pending = None
-        self.pace.reached(t)
+        if not self.adaptive:
+            self.pace.reached(t)
         after_step = self.model.after_step
         if after_step is not None:
             self._after_step(after_step(t, self.step.state, *self.extra))
         if at_break or restart:
             self.step.fresh = False
+            if at_break:
+                # Beyond the break, whichever side `t < t_break` and `t <= t_break` give to the break itself.
+                self.step.floor = just_after(t, self.direction)
             if self.controller is not None:
                 self.memory = self.controller.start()
 
@@ -287,11 +296,12 @@ class Loop:
             if (self.breaks[self.break_index] - t) * self.direction > 0:
                 break
             self.break_index += 1
+        self.wall = self._break_ahead()
         return self.break_index > before
 
     def accept_proposal(self, t: Any) -> None:
         """Commit a step that a caller proposed; its events are recorded at its end."""
-        happened = self.crossings.settle(t, self.step.new) if self.crossings.events else []
+        happened = self.crossings.settle(t, self.step.new) if self.has_events else []
         for i in happened:
             event = self.crossings.events[i]
             self.events.append(EventRecord(event.label, float(t), self.step.new.copy()))
@@ -307,6 +317,7 @@ class Loop:
         self.break_index = 0
         self._pass_breaks(t)
         self.replace_state(state)
+        self.step.floor = just_after(t, self.direction) if t in self.model.breaks else None
         self.pace.restart(t)
         if self.controller is not None:
             self.memory = self.controller.start()
@@ -355,6 +366,7 @@ class Loop:
             pace=self.pace.save(),
             signs=tuple(self.crossings.signs),
             break_index=self.break_index,
+            floor=step.floor,
             params=copy_params(self.params)[0],
             counters=(self.accepted, self.rejected, step.calls),
             events=len(self.events),
@@ -364,15 +376,12 @@ class Loop:
     def restore(self, saved: Saved) -> None:
         """Go back to what `save` returned; counters and events go back with it."""
         step = self.step
-        step.slab[0] = saved.state
-        step.fresh = saved.rate is not None
-        if saved.rate is not None:
-            step.slab[1] = saved.rate
-        if saved.carry is not None:
-            step.carry[:] = saved.carry
+        step.put(saved.state, saved.rate, saved.carry)
+        step.floor = saved.floor
         self._take_params(copy_params(saved.params)[0])
         self.time, self.next_step, self.last_step = saved.time, saved.next_step, saved.last_step
         self.memory, self.break_index = saved.memory, saved.break_index
+        self.wall = self._break_ahead()
         self.pace.restore(saved.pace)
         self.crossings.signs = list(saved.signs)
         self.accepted, self.rejected, step.calls = saved.counters

@@ -193,7 +193,11 @@ class _Drive:
                 raise
             raise self._failure(str(error), "", type(error).__name__) from error
         except Exception as error:
-            raise self._failure(blame(error, model), "", "raised") from error
+            words = blame(error, model)
+            if words is None:
+                self._rescue("failed")
+                raise
+            raise self._failure(words, "", "raised") from error
         except BaseException:
             self._rescue("failed")
             raise

@@ -20,10 +20,13 @@ __all__ = ["Limits", "breaks_inside", "check_state_kind", "pace_of", "tolerances
 
 
 class Limits(NamedTuple):
-    """An adaptive rule, fitted to a state: `abs_tol` is flat, of the state's size or of size 1."""
+    """An adaptive rule, fitted to a state.
+
+    `ratio` is abs_tol/rel_tol, flat, of the state's size or of size 1.
+    """
 
     rel_tol: float
-    abs_tol: Array
+    ratio: Array
     norm: Norm | None
     smallest: float
     largest: float
@@ -69,7 +72,9 @@ def tolerances(model: Model, rule: Adaptive) -> Limits:
     flat = tolerance.reshape(1) if tolerance.ndim == 0 else wide.reshape(-1).copy()
     if not (flat > 0).all():
         raise BadRequest(f"abs_tol={rule.abs_tol!r} is zero in a state of dtype {dtype}", argument="abs_tol")
-    return Limits(rule.rel_tol, flat, rule.norm, rule.smallest or 0.0, rule.largest or math.inf)
+    return Limits(
+        rule.rel_tol, flat / rule.rel_tol, rule.norm, rule.smallest or 0.0, rule.largest or math.inf
+    )
 
 
 def breaks_inside(model: Model) -> list[float]:

@@ -211,7 +211,7 @@ class Stepper:
         if engine.has_estimate:
             error = engine.error_and_scale(0.0, np.ones(1))[0]
         if loop.limits is not None:
-            norm = engine.error_norm(loop.limits.rel_tol, loop.limits.abs_tol, loop.limits.norm)
+            norm = engine.error_norm(loop.limits.rel_tol, loop.limits.ratio, loop.limits.norm)
         self._trial = Trial(self, ahead, engine.new.copy(), error, norm)
         return self._trial
 
@@ -294,7 +294,6 @@ class Stepper:
     def _guarded(self, action: Callable[[], Any]) -> None:
         """Do it; a failure leaves the stepper at its last accepted step and says so."""
         loop = self._loop
-        before = loop.accepted
         try:
             action()
         except CannotGoOn as error:
@@ -302,9 +301,10 @@ class Stepper:
         except NewelError:
             raise
         except Exception as error:
-            if before == 0 and loop.step.calls == 0:
+            words = blame(error, loop.model)
+            if words is None:
                 raise
-            raise self._failure(blame(error, loop.model), "raised") from error
+            raise self._failure(words, "raised") from error
 
     def _failure(self, message: str, reason: str) -> MarchFailed:
         loop = self._loop

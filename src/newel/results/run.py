@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from html import escape
 from typing import Any
 
 import attrs
@@ -45,7 +46,7 @@ class EventRecord:
     state: Array
 
 
-@attrs.define(eq=False)
+@attrs.define(eq=False, repr=False)
 class Run:
     """A march's outcome: its last state, its counters, and, with a memory sink, every row.
 
@@ -114,6 +115,30 @@ class Run:
             )
         flat: Array = states.reshape(len(states), -1)[:, self.labels.index(label)]
         return flat
+
+    def _facts(self) -> tuple[tuple[str, str], ...]:
+        unit = f" {self.time_unit}" if self.time_unit else ""
+        reason = "not ended" if self.ended is None else f"ended by {self.ended.label or self.ended.reason}"
+        shown = ", ".join(
+            f"{label} = {value:.6g}" if isinstance(value, (float, complex)) else f"{label} = {value}"
+            for label, value in zip(self.labels[:4], self.last_state.reshape(-1)[:4].tolist(), strict=False)
+        )
+        more = ", …" if self.last_state.size > 4 else ""
+        work = f"{self.accepted:,} steps, {self.rejected:,} rejected, {self.calls:,} rate calls"
+        notes = f"; {len(self.events)} events, {len(self.notes)} notes"
+        return (
+            ("march", f"{self.method}, {reason} at t = {float(self.last_time):.9g}{unit}"),
+            ("work", f"{work}, error estimate: {self.estimator}{notes}"),
+            ("last state", f"{shown}{more}"),
+        )
+
+    def __repr__(self) -> str:
+        march, work, state = (text for _, text in self._facts())
+        return f"Run of {march}\n  {work}\n  {state}"
+
+    def _repr_html_(self) -> str:
+        rows = "".join(f"<tr><th>{name}</th><td>{escape(text)}</td></tr>" for name, text in self._facts())
+        return f"<table>{rows}</table>"
 
     def columns(self) -> dict[str, Array]:
         """One array a column, `t` first: `pandas.DataFrame(run.columns())` makes a frame.

@@ -29,6 +29,8 @@ __all__ = ["NumpyStep", "coefficient_array"]
 # Bytes of one row that are worked on at a time: a dozen of them fit into a second-level cache.
 _PIECE = 32_768
 
+_abs, _add, _divide, _maximum = np.abs, np.add, np.divide, np.maximum
+
 
 def _read_only(array: Array, shape: tuple[int, ...]) -> Array:
     view = array.reshape(shape).view()
@@ -79,7 +81,8 @@ class NumpyStep:
     Attributes:
         state, new: read-only views of the state before and after the step, in the state's shape.
         has_estimate: whether an error estimate is made. fresh: whether row 1 holds the rate at `state`.
-        calls: how often the rate was called.
+        calls: how often the rate was called. floor: just beyond a break, where the step starts on one: no
+        stage is evaluated before it; gone once the step is accepted.
     """
 
     def __init__(
@@ -97,8 +100,10 @@ class NumpyStep:
         self.rate, self.shape, self.dtype, self.after_stage = rate, shape, dtype, after_stage
         self.evaluate = rate.evaluate
         self.first_same_as_last = bool(tableau.first_same_as_last)
-        self.calls, self.fresh, self.has_estimate = 0, False, estimate
+        self.calls, self.fresh, self.has_estimate, self.count = 0, False, estimate, size
         self.compensated = compensated and dtype != np.dtype(object)
+        self.sizes_known = self.sizes_made = False
+        self.floor: Any = None
         self._coefficients(tableau, estimate)
 
         self.slab = np.zeros((s + 1, size), dtype=dtype)
@@ -117,7 +122,9 @@ class NumpyStep:
             assert embedded is not None, "the march asks for an estimate only of a pair"
             rows.append([w - e for w, e in zip(tableau.weights, embedded, strict=True)])
         self.base = coefficient_array(rows, dtype)
-        self.work = np.ones((len(rows), s + 1), dtype=dtype)
+        # Columns first, so that all but the first column is one run of memory, scaled in one go.
+        self.base = np.asfortranarray(self.base)
+        self.work = np.ones((len(rows), s + 1), dtype=dtype, order="F")
         self.scaled = self.work[:, 1:]
         self.step_of_work: Any = None
         if dtype == np.dtype(object):
@@ -138,36 +145,56 @@ class NumpyStep:
             parts = [(slab[: i + 1, cut], target[cut]) for cut in cuts]
             view = self.new if last else stage_view
             self.plan.append((self.work[i, : i + 1].dot, parts, self.nodes[i], view, self.rows[i + 1], last))
-        self.final_dot = self.work[s].dot
-        self.final_parts = [(slab[:, cut], self.new_flat[cut]) for cut in cuts]
+        # The last stage of a first-same-as-last method is not yet there when the new state is formed.
+        known = s - 1 if self.first_same_as_last else s
+        self.final_dot = self.work[s, : known + 1].dot
+        self.final_parts = [(slab[: known + 1, cut], self.new_flat[cut]) for cut in cuts]
+        whole = len(cuts) == 1 and self.after_stage is None
+        by_last = self.compensated and self.first_same_as_last
+        self.plain = (
+            [(dot, *parts[0], node, view, row) for dot, parts, node, view, row, _ in self.plan]
+            if whole and not by_last
+            else []
+        )
         real = np.zeros(0, dtype=dtype).real.dtype
         self.zeros = np.zeros(length, dtype=dtype)
         self.scratch = np.zeros(length, dtype=dtype)
-        self.scale_scratch = np.zeros((2, length), dtype=real)
+        self.scale = np.zeros(length, dtype=real)
         quotient = np.float64 if real == np.dtype(np.float32) else real
         self.quotient = np.zeros(length, dtype=quotient)
         self.cuts = cuts
         if self.compensated:
-            # The last stage of a first-same-as-last method is not yet there when the new state is formed.
-            known = s - 1 if self.first_same_as_last else s
             self.increment_dot = self.work[s, 1 : known + 1].dot
             self.increment_rates = slab[1 : known + 1]
             self.carry, self.next_carry = np.zeros(size, dtype=dtype), np.zeros(size, dtype=dtype)
-        if len(self.base) > s + 1:
+        if self.has_estimate:
             self.error_dot = self.work[s + 1, 1:].dot
-            self.error_parts = [(slab[1:, c], slab[0, c], self.new_flat[c], c) for c in cuts]
+            self.size_before, self.size_after = np.zeros(size, dtype=real), np.zeros(size, dtype=real)
+            self.tame = 0.0 if dtype.kind == "c" else float(np.finfo(real).max) ** 0.5
+            self.error_parts = []
+            for cut in cuts:
+                n = cut.stop - cut.start
+                buffers = self.scratch[:n], self.scale[:n], self.quotient[:n]
+                place = None if len(cuts) == 1 else cut
+                self.error_parts.append((slab[1:, cut], self.new_flat[cut], *buffers, place))
 
     def load(self, state: Array) -> None:
         """Start anew from this state, shape and dtype as at first; the rate at it is not known yet."""
+        self.put(state, None, None)
+
+    def put(self, state: Array, rate: Array | None, carry: Array | None) -> None:
+        """Take a state with the rate at it and what the compensated sum carries, where they are known."""
         self.slab[0] = state.reshape(-1)
-        self.fresh = False
+        self.fresh, self.sizes_known = rate is not None, False
+        if rate is not None:
+            self.slab[1] = rate
         if self.compensated:
-            self.carry[:] = 0
+            self.carry[:] = 0 if carry is None else carry
 
     def begin(self, t: Any) -> None:
         """Evaluate the rate at the state, unless it is there already."""
         if not self.fresh:
-            self.evaluate(t, self.state, self.rows[1])
+            self.evaluate(t if self.floor is None else self.floor, self.state, self.rows[1])
             self.calls += 1
             self.fresh = True
 
@@ -181,30 +208,58 @@ class NumpyStep:
             self.step_of_work = h
         if not self.fresh:
             self.begin(t)
-        evaluate, after_stage = self.evaluate, self.after_stage
+        self.sizes_made = False
+        if self.plain and ceiling is None and self.floor is None:
+            self._plain_stages(t, h)
+        else:
+            self._careful_stages(t, h, ceiling)
+        self.calls += self.stages - 1
+        if not self.first_same_as_last:
+            self._combine_final()
+            if self.after_stage is not None:
+                self._replace(self.new_flat, self.after_stage(t + h, self.new))
+
+    def _plain_stages(self, t: Any, h: Any) -> None:
+        # The rate is called and judged right here: a function between costs as much as the product.
+        call, fit, shape, dtype, ndarray = self.rate.call, self.rate.fit, self.shape, self.dtype, np.ndarray
+        if self.rate.in_place:
+            for dot, prefix, out, node, view, row in self.plain:
+                dot(prefix, out)
+                call(t + node * h, view, row)
+            return
+        for dot, prefix, out, node, view, row in self.plain:
+            dot(prefix, out)
+            result = call(t + node * h, view)
+            if result.__class__ is ndarray and result.dtype is dtype and result.shape == shape:
+                row[...] = result
+            else:
+                row[...] = fit(result)
+
+    def _careful_stages(self, t: Any, h: Any, ceiling: Any) -> None:
+        """The stages with all that can be asked for: pieces, compensation, a ceiling, a look at each."""
+        evaluate, after_stage, floor = self.evaluate, self.after_stage, self.floor
         for dot, parts, node, view, row, last in self.plan:
-            if last and self.compensated:
-                self._combine_compensated()
+            if last:
+                self._combine_final()
             else:
                 for prefix, out in parts:
                     dot(prefix, out)
             time = t + node * h
             if ceiling is not None and (time - ceiling) * h > 0:
                 time = ceiling
+            elif floor is not None and (time - floor) * h < 0:
+                time = floor
             if after_stage is not None:
                 self._replace(self.new_flat if last else self.stage, after_stage(time, view))
             evaluate(time, view, row)
-        self.calls += self.stages - 1
-        if self.first_same_as_last:
-            return
+
+    def _combine_final(self) -> None:
         if self.compensated:
             self._combine_compensated()
-        else:
-            dot = self.final_dot
-            for prefix, out in self.final_parts:
-                dot(prefix, out)
-        if after_stage is not None:
-            self._replace(self.new_flat, after_stage(t + h, self.new))
+            return
+        dot = self.final_dot
+        for prefix, out in self.final_parts:
+            dot(prefix, out)
 
     def _combine_compensated(self) -> None:
         dot, slab, rates, scratch = self.increment_dot, self.slab, self.increment_rates, self.scratch
@@ -229,33 +284,48 @@ class NumpyStep:
             )
         target[:] = array.reshape(-1)
 
-    def error_norm(self, rel_tol: float, abs_tol: Array, norm: Norm | None) -> float:
+    def error_norm(self, rel_tol: float, ratio: Array, norm: Norm | None) -> float:
         """Return the norm of the last attempt's error estimate (unitless; 1 is the tolerance; may be NaN).
 
-        `abs_tol` is an array of the state's size, flat, or of size 1. The default norm is the weighted root
-        mean square over all entries with scale abs_tol + rel_tol·max(|y_n|, |y_n+1|).
+        `ratio` is abs_tol/rel_tol, an array of the state's size, flat, or of size 1. The default norm is the
+        weighted root mean square over all entries with scale abs_tol + rel_tol·max(|y_n|, |y_n+1|).
         """
         if norm is not None:
-            return float(norm(*self.error_and_scale(rel_tol, abs_tol)))
-        total = 0.0
-        dot, one = self.error_dot, abs_tol.size == 1
+            return float(norm(*self.error_and_scale(rel_tol, ratio * rel_tol)))
+        if not self.sizes_known:
+            _abs(self.slab[0], self.size_before)
+            self.sizes_known = True
+        self.sizes_made = True
+        total, dot, tame = 0.0, self.error_dot, self.tame
+        before, after, one = self.size_before, self.size_after, ratio.size == 1
+        for rates, new, error, scale, quotient, cut in self.error_parts:
+            dot(rates, error)
+            # Sizes far from overflow cannot raise a floating-point warning; guarding costs more than asking.
+            if not (tame and error.dot(error) < tame and new.dot(new) < tame):
+                total += self._wild_square(error, new, ratio, cut)
+                continue
+            if cut is None:
+                _abs(new, after)
+                _maximum(before, after, out=scale)
+                _add(scale, ratio, scale)
+            else:
+                _abs(new, after[cut])
+                _maximum(before[cut], after[cut], out=scale)
+                _add(scale, ratio if one else ratio[cut], scale)
+            _divide(error, scale, quotient)
+            total += quotient.dot(quotient)
+        return math.sqrt(total / self.count) / rel_tol
+
+    def _wild_square(self, error: Array, new: Array, ratio: Array, cut: slice | None) -> float:
+        """The same for complex numbers, and for what may overflow or be no number."""
+        piece = slice(0, self.count) if cut is None else cut
         with np.errstate(all="ignore"):
-            for rates, state, new, cut in self.error_parts:
-                length = len(state)
-                error, quotient = self.scratch[:length], self.quotient[:length]
-                scale, other = self.scale_scratch[:, :length]
-                dot(rates, error)
-                np.abs(state, scale)
-                np.abs(new, other)
-                np.maximum(scale, other, scale)
-                np.multiply(scale, rel_tol, scale)
-                np.add(scale, abs_tol if one else abs_tol[cut], scale)
-                if error.dtype.kind == "c":
-                    np.abs(error, other)
-                    error = other
-                np.divide(error, scale, quotient)
-                total += float(quotient.dot(quotient))
-        return math.sqrt(total / self.new_flat.size)
+            np.abs(new, self.size_after[piece])
+            scale = np.maximum(self.size_before[piece], self.size_after[piece])
+            quotient = np.abs(error).astype(self.quotient.dtype) / (
+                scale + (ratio if ratio.size == 1 else ratio[piece])
+            )
+            return float(quotient.dot(quotient))
 
     def error_and_scale(self, rel_tol: float, abs_tol: Array) -> tuple[Array, Array]:
         """Return the last attempt's error estimate and its scale, new arrays in the state's shape."""
@@ -273,6 +343,11 @@ class NumpyStep:
     def accept(self) -> None:
         """Make the new state the state; keep the rate at it where the last stage is the next first."""
         self.slab[0] = self.new_flat
+        self.floor = None
+        if self.has_estimate:
+            # The sizes of the new state are known where its error was asked for.
+            self.sizes_known = self.sizes_made
+            self.size_before, self.size_after = self.size_after, self.size_before
         if self.compensated:
             self.carry, self.next_carry = self.next_carry, self.carry
         if self.first_same_as_last:

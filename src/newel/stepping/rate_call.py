@@ -37,6 +37,9 @@ class RateCall:
     `evaluate(t, y, out)` takes the time, a read-only state and a row to fill, both of the state's shape.
     What the rate returns is copied at once, so that a rate may return the same array each time.
 
+    `call(t, y)`, or `call(t, y, out)` in place, is the bare call, for the engine's own loop, which then does
+    what `evaluate` does.
+
     Args:
         model: the model whose rate is called.
         params: the params of this march (its own copy), passed exactly when the model has params.
@@ -49,6 +52,7 @@ class RateCall:
         self.model = model
         self.copies = bool(model.copies)
         self.notes: list[str] = []
+        self.call: Callable[..., Any] = self.rate
         self.evaluate: Evaluate = self._bound()
 
     def first(self, t: Any, y: Array, out: Array) -> None:
@@ -118,10 +122,11 @@ class RateCall:
                 return rate(t, y, *more, *extra)
         else:
             call = rate
+        self.call = call
         if self.in_place:
             return call
 
-        fit, shape, dtype, ndarray = self._fit, self.shape, self.dtype, np.ndarray
+        fit, shape, dtype, ndarray = self.fit, self.shape, self.dtype, np.ndarray
 
         def evaluate(t: Any, y: Array, out: Array) -> None:
             result = call(t, y)
@@ -132,7 +137,7 @@ class RateCall:
 
         return evaluate
 
-    def _fit(self, result: Any) -> Array:
+    def fit(self, result: Any) -> Array:
         """Turn what the rate returned into an array of the state's shape and dtype, or say what is wrong."""
         where = where_defined(self.rate)
         if result is None:

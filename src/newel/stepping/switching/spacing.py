@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 
-__all__ = ["just_before", "spacing"]
+__all__ = ["just_after", "just_before", "spacing"]
 
 
 def spacing(t: float) -> float:
@@ -25,3 +25,13 @@ def just_before(t: float, direction: float) -> float:
         True
     """
     return math.nextafter(t, -math.inf if direction > 0 else math.inf)
+
+
+def just_after(t: float, direction: float) -> float:
+    """Return the first float after t for a march in the direction of the sign of `direction`.
+
+    Example:
+        >>> just_after(1.0, -1.0) < 1.0 < just_after(1.0, 1.0)
+        True
+    """
+    return just_before(t, -direction)
