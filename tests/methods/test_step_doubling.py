@@ -9,10 +9,12 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from newel.catalogue.shipped import tableau_files
 from newel.errors import BadRequest
 from newel.methods.analysis.error_norms import error_terms
 from newel.methods.exact import Exact
 from newel.methods.families.step_doubling import doubled
+from newel.methods.order_conditions import prove
 from newel.methods.tableau import Tableau
 from newel.methods.tableau_file import format_tableau, parse_tableau
 
@@ -44,6 +46,22 @@ def test_doubled_kutta_4_has_11_stages_and_order_5() -> None:
         terms = error_terms(pair, order, embedded=True)
         assert max(abs(term) for term in terms or ()) < Fraction(1, 10**100)
     assert max(abs(term) for term in error_terms(pair, 5, embedded=True) or ()) > Fraction(1, 10**6)
+
+
+def test_its_claims_are_proved() -> None:
+    verdict = prove(doubled(kutta()))
+    assert (verdict.outcome, verdict.order, verdict.embedded_order) == ("exact", 5, 4)
+
+
+@pytest.mark.parametrize("slug", ["carpenter-kennedy-4", "ssp-3-stages-5", "tsitouras-2011-5-4"])
+def test_the_pair_of_a_rounded_method_is_proved_as_rounded(slug: str) -> None:
+    method = parse_tableau(tableau_files()[slug].read_text(encoding="utf-8"))
+    verdict = prove(doubled(method))
+    assert (verdict.outcome, verdict.order, verdict.embedded_order) == (
+        "rounded",
+        method.order + 1,
+        method.order,
+    )
 
 
 def test_its_numbers_are_exact_where_those_of_the_method_are() -> None:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import contextlib
 import os
 import tomllib
+from importlib.resources import files
 from pathlib import Path
 
 import pytest
@@ -131,6 +132,28 @@ def test_a_byte_order_mark_and_windows_line_ends_are_passed_over(tmp_path: Path)
     file = tmp_path / "mine-1.toml"
     file.write_bytes(b"\xef\xbb\xbf" + minimal().replace("\n", "\r\n").encode())
     assert load_tableau(file).slug == "mine-1"
+
+
+def readme_example() -> str:
+    text = (files("newel.tableaux") / "README.md").read_text(encoding="utf-8")
+    return text.split("```toml\n")[1].split("```")[0]
+
+
+def test_the_example_of_the_readme_is_a_good_file(tmp_path: Path) -> None:
+    file = tmp_path / "bogacki-shampine-3-2.toml"
+    file.write_text(readme_example(), encoding="utf-8")
+    t = load_tableau(file)
+    assert t.first_same_as_last
+    assert format_tableau(t) == readme_example()
+
+
+def test_the_readme_tells_every_key_that_the_reader_knows() -> None:
+    text = (files("newel.tableaux") / "README.md").read_text(encoding="utf-8")
+    with pytest.raises(BadTableau) as caught:
+        parse_tableau(minimal(zzz="1"))
+    known = str(caught.value).split("Known: ")[1].rstrip(".").split(", ")
+    assert len(known) == 16
+    assert [key for key in known if f"`{key}`" not in text and f"`[{key}]`" not in text] == []
 
 
 def test_plain_toml_integers_are_numbers() -> None:
