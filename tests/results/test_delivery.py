@@ -123,6 +123,18 @@ def test_a_flush_in_between_changes_no_row():
     assert sinks[0].blocks == [1] * 8
 
 
+def test_a_last_row_that_was_not_due_outlives_a_flush():
+    sink = RecordingSink(Thinning(every_steps=10))
+    out = delivery(sink)
+    out.open()
+    for n in range(3):
+        out.row(float(n), np.array([n * 5.0]))
+    out.flush()
+    out.close(STOP)
+    assert sink.times == [0, 2]
+    assert [float(y[0]) for y in sink.states] == [0, 10]
+
+
 def test_states_are_copied():
     sink, y = RecordingSink(), np.array([1.0])
     out = delivery(sink)
@@ -279,6 +291,12 @@ def test_a_thinned_memory_fills_by_the_rows_that_it_gets():
     assert memory.times.tolist() == [0, 10, 20]
 
 
+def test_a_memory_that_the_last_row_fills_at_the_close_is_no_event():
+    memory = Memory(limit=16 * 3, every_steps=10)
+    march(memory, steps=15, tell_last=False)
+    assert memory.times.tolist() == [0, 10, 15]
+
+
 def test_a_march_of_known_length_is_refused_by_the_sink_that_cannot_hold_it():
     delivery(Memory(limit=16 * 11), Memory(limit=100, every_steps=5), RecordingSink()).require_room(10)
     with pytest.raises(BadRequest, match="12 rows of 1 float64 need 192 bytes; the limit is 176 bytes"):
@@ -337,6 +355,22 @@ def test_closing_twice_closes_once_and_an_error_is_told_once():
         out.flush()
     out.close(STOP)
     out.close(STOP)
+    assert len(sink.ended) == 1
+
+
+def test_a_sink_that_failed_and_cannot_close_either_is_told_once():
+    class Hopeless(FailingSink):
+        def close(self, ended):
+            super().close(ended)
+            raise OSError(5, "Input/output error")
+
+    sink = Hopeless("write", OSError(28, "No space left on device"))
+    out = delivery(sink)
+    out.open()
+    out.row(0.0, np.array([1.0]))
+    with pytest.raises(OutputFailed, match="no space left"):
+        out.flush()
+    out.close(Ended("failed", 0.0))
     assert len(sink.ended) == 1
 
 

@@ -63,6 +63,16 @@ def test_it_can_be_read_while_it_is_open_and_goes_on_afterwards():
     assert memory.states[:, 0].tolist() == [0, 1, 2, 3, 4]
 
 
+def test_reading_it_in_between_loses_nothing_in_a_later_piece():
+    memory = Memory()
+    memory.open(head_for())
+    for first in range(0, 1000, 100):
+        memory.write(*rows(100, first))
+        assert len(memory.states) == first + 100
+    memory.close(STOP)
+    assert np.array_equal(memory.times, np.arange(1000.0))
+
+
 def test_size_is_that_of_times_and_states():
     assert Memory.size_of(10, (3, 4), np.float32) == 10 * (8 + 12 * 4)
     assert Memory.size_of(1, (), complex) == 24
