@@ -114,6 +114,8 @@ class Coefficients:
     def slack(self, name: str) -> Floats:
         """Return the half units δ of an array in float64, zero where exact."""
         if name not in self._slacks:
+            if self.array(name):
+                self.floats(name)  # refuses what is too large before its half unit overflows
             given, values = self.half_units.get(name), self.array(name)
             width = () if not values or isinstance(values[0], Exact) else (len(values[0]),)
             self._slacks[name] = _nested_floats(given) if given else np.zeros((len(values or ()), *width))

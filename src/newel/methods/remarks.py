@@ -111,9 +111,8 @@ def undetermined(
 ) -> tuple[str, ...]:
     """Return the entries of A that no tree condition of the claimed orders sees: only their row sum does.
 
-    An entry is seen where the gradient of some condition is not zero, or where a change by 1/3 moves one.
-    Entries on and above the diagonal count only where they are not zero. Weights are always seen, by their
-    sum.
+    An entry is seen where the gradient of some condition with respect to it is not zero. Entries on and above
+    the diagonal count only where they are not zero. Weights are always seen, by their sum.
     """
     matrix = sensitivities.matrix
     unseen = np.tril(np.ones(matrix.shape, dtype=bool), -1) | (matrix != 0)
@@ -127,19 +126,5 @@ def undetermined(
                     return ()
                 gradients = np.abs(sensitivities.matrix_gradients(piece, rows)).max(axis=(0, 1))
                 unseen &= gradients <= 1e-13 * max(1.0, gradients.max())
-        places = [
-            place for place in np.argwhere(unseen).tolist() if not _moves(matrix, place, weights, claims)
-        ]
+    places = np.argwhere(unseen).tolist()
     return tuple(f"matrix[{row + 1}][{column + 1}]" for row, column in places)
-
-
-def _moves(matrix: Floats, place: list[int], weights: Sequence[Floats], claims: Sequence[int]) -> bool:
-    changed = matrix.copy()
-    changed[tuple(place)] += 1 / 3
-    before, after = Sensitivities(matrix), Sensitivities(changed)
-    for order in range(2, max(claims) + 1):
-        moved = after.stage_vectors(trees(order)) - before.stage_vectors(trees(order))
-        for rows, claim in zip(weights, claims, strict=True):
-            if claim >= order and np.abs(rows @ moved.T).max() > 1e-12:
-                return True
-    return False
