@@ -39,7 +39,7 @@ def pairs() -> dict[str, Any]:
     """The built-in tableaux with embedded weights, by slug."""
     from newel.catalogue.registry import Registry
 
-    registry = Registry(folders=(), plugins=False, cache=None)
+    registry = Registry(folders=(), plugins=False)
     found = {slug: registry.find(slug) for slug in registry.names()}
     return {slug: tableau for slug, tableau in found.items() if tableau.embedded_weights is not None}
 
@@ -83,7 +83,7 @@ def march_one(problem: Problem, method: Any, tolerance: str) -> Figure:
 def _row(slug: str, name: str) -> tuple[str, str, dict[str, Figure]]:
     from newel.catalogue.registry import Registry
 
-    tableau = Registry(folders=(), plugins=False, cache=None).find(slug)
+    tableau = Registry(folders=(), plugins=False).find(slug)
     return slug, name, {text: march_one(NONSTIFF[name], tableau, text) for text in tolerances_of(tableau)}
 
 

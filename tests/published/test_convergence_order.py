@@ -17,9 +17,10 @@ import pytest
 
 import newel
 from newel.catalogue.registry import Registry
+from tests.problems.arithmetic import Array
 from tests.problems.closed_forms import CLOSED_FORMS, SWITCHED, WARPED, Known, measured_order
 
-REGISTRY = Registry(folders=(), plugins=False, cache=None)
+REGISTRY = Registry(folders=(), plugins=False)
 SLUGS = REGISTRY.names()
 
 # Common practice: a measured slope within a quarter of the order is taken to show it.
@@ -42,15 +43,17 @@ def model_of(known: Known, breaks: tuple[float, ...] | None = None) -> newel.Mod
 
 
 def slope(known: Known, method: Any, breaks: tuple[float, ...] | None = None) -> float:
-    """The measured order of one method in equal steps, always an even number: a break half-way fits."""
-    model, span = model_of(known, breaks), known.stop - known.start
+    """The measured order of one method in equal steps; each piece between breaks is cut into as many."""
+    model, span, pieces = model_of(known, breaks), known.stop - known.start, len(known.breaks) + 1
+    proof = method.proof
+    floor = proof.working_floor if proof is not None and proof.outcome == "rounded" else 0.0
 
-    def error_of(count: int) -> float:
-        run = newel.march(model, method, step=span / count, sinks=[])
-        assert run.accepted == count
+    def error_of(count: int) -> Array:
+        run = newel.march(model, method, step=span / (count * pieces), sinks=[])
+        assert run.accepted == count * pieces
         return known.error(run.last_state)
 
-    return measured_order(error_of, start=4)
+    return measured_order(error_of, method.order, floor, most=128 if method.order < 3 else 64)
 
 
 @pytest.mark.parametrize("name", list(CLOSED_FORMS))
@@ -75,11 +78,14 @@ def test_measured_order_is_the_claimed_order(slug: str) -> None:
 
 @pytest.mark.parametrize("slug", SLUGS)
 def test_order_is_kept_across_a_break_on_a_step_end(slug: str) -> None:
-    assert slope(SWITCHED, tableau(slug)) > tableau(slug).order - SLACK
+    """But for methods with a node outside the step: what lies beyond the break is not the same equation."""
+    inside = all(0 <= node <= 1 for node in tableau(slug).nodes)
+    kept = tableau(slug).order if inside else 1
+    assert slope(SWITCHED, tableau(slug)) > kept - SLACK
 
 
 @pytest.mark.parametrize("name", ["logistic", "oscillator", "paced-growth"])
-@pytest.mark.parametrize("slug", ["kutta-4", "dormand-prince-5-4", "dormand-prince-8-7"])
+@pytest.mark.parametrize("slug", ["bogacki-shampine-3-2", "kutta-4", "dormand-prince-5-4"])
 def test_order_is_not_lost_on_special_problems(slug: str, name: str) -> None:
     assert slope(CLOSED_FORMS[name], tableau(slug)) > tableau(slug).order - 2 * SLACK
 

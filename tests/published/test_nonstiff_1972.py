@@ -27,7 +27,7 @@ IN_FULL = (
     "cash-karp-5-4",
     "dormand-prince-5-4",
     "verner-1978-6-5",
-    "dormand-prince-8-7",
+    "prince-dormand-8-7",
 )
 
 # Another machine rounds otherwise, so an error far below the tolerance may land elsewhere below it.
