@@ -12,6 +12,8 @@ from newel.catalogue import proofs
 from newel.catalogue.checking import check
 from newel.catalogue.proofs import Proofs, user_cache_folder
 from newel.catalogue.registry import Registry
+from newel.catalogue.shipped import tableau_files
+from newel.catalogue.summaries import listed_summary
 from newel.methods import order_conditions
 from newel.methods.order_conditions import proof_key
 from newel.methods.tableau import Tableau
@@ -46,6 +48,12 @@ def test_a_proof_is_made_once_and_then_read_from_the_cache(tmp_path: Path, prove
     assert again == first
     assert proved == ["mine-2"]
     assert [file.name for file in kept(tmp_path)] == [f"{proof_key(two_stages('mine-2'))}.json"]
+
+
+def test_a_proof_is_remembered_in_memory_too(proved: list[str]) -> None:
+    memory = Proofs(None)
+    assert memory.verdict(two_stages("mine-2")) is memory.verdict(two_stages("mine-2"))
+    assert proved == ["mine-2"]
 
 
 def test_a_failed_proof_is_remembered_with_its_failures(tmp_path: Path, proved: list[str]) -> None:
@@ -145,6 +153,30 @@ def test_the_list_is_only_a_memory(monkeypatch: pytest.MonkeyPatch, proved: list
         assert stand.find("kutta-4").proof
         assert stand.find(two_stages("mine-2")).proof
     assert proved == ["kutta-4", "mine-2"] * 2
+
+
+@pytest.mark.parametrize(
+    "text",
+    ['schema = "newel-proofs/9"\n[[method]]\nkey = "a"', "not = = TOML", 'schema = "newel-proofs/1"', "\xff"],
+)
+def test_a_list_that_cannot_be_understood_is_empty(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, text: str
+) -> None:
+    import importlib.resources
+
+    (tmp_path / "proved.toml").write_bytes(text.encode("latin-1"))
+    monkeypatch.setattr(importlib.resources, "files", lambda _: tmp_path)
+    assert proofs.listed_proofs.__wrapped__() == {}
+
+
+def test_a_summary_is_believed_only_of_the_very_file_it_was_made_from(tmp_path: Path) -> None:
+    file = tableau_files()["kutta-4"]
+    copy = tmp_path / "kutta-4.toml"
+    copy.write_bytes(file.read_bytes())
+    assert listed_summary("kutta-4", copy) is not None
+    copy.write_bytes(file.read_bytes() + b"\n")
+    assert listed_summary("kutta-4", copy) is None
+    assert listed_summary("kutta-4", tmp_path / "gone.toml") is None
 
 
 # check

@@ -46,6 +46,12 @@ def test_a_stale_proof_on_an_altered_tableau_is_not_believed() -> None:
         registry().find(altered)
 
 
+def test_a_proof_carried_over_from_other_numbers_is_replaced() -> None:
+    kutta, midpoint = registry().find("kutta-4"), registry().find("midpoint-2")
+    found = registry().find(attrs.evolve(kutta, proof=midpoint.proof))
+    assert found.proof == kutta.proof
+
+
 def test_names_read_no_file(tmp_path: Path) -> None:
     (tmp_path / "broken-1.toml").write_text("this is = = no TOML")
     stand = registry(tmp_path)
@@ -182,6 +188,8 @@ def test_trust_skips_the_proof_and_leaves_the_method_unproven() -> None:
     assert stand.register(false, trust=True).proof is None
     assert stand.find("mine-3").proof is None
     assert stand.find(false).proof is None
+    borrowed = attrs.evolve(false, proof=stand.find("kutta-4").proof)
+    assert stand.find(borrowed).proof is None
     assert check("mine-3", registry=stand).outcome == "fails"
 
 
@@ -252,6 +260,22 @@ def test_a_broken_file_behind_a_good_one_is_left_out_with_a_warning(tmp_path: Pa
     stand = registry(tmp_path / "one", tmp_path / "two")
     with pytest.warns(PluginWarning, match="mine-2"):
         assert stand.find("mine-2").order == 2
+
+
+def test_a_broken_built_in_is_never_replaced_from_outside(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    from newel.catalogue import shipped
+
+    data = tmp_path / "spoilt_methods" / "order-2"
+    data.mkdir(parents=True)
+    (data.parent / "__init__.py").write_text("")
+    (data / "mine-2.toml").write_text("nonsense")
+    monkeypatch.syspath_prepend(str(tmp_path))
+    monkeypatch.setattr(shipped, "PACKAGE", "spoilt_methods")
+    write(tmp_path / "outside", "mine-2")
+    with pytest.raises(BadTableau, match="spoilt_methods"):
+        registry(tmp_path / "outside").find("mine-2")
 
 
 def test_lists_leave_out_what_does_not_stand_and_go_on(tmp_path: Path) -> None:

@@ -74,6 +74,7 @@ def report_of(registry: Registry, module: str) -> PluginReport:
         ("import no_such_module_anywhere\n", "no_such_module", "ModuleNotFoundError"),
         ("def broken(:\n", "def broken", "SyntaxError"),
         ("raise RuntimeError('no licence')\n", "no licence", "RuntimeError: no licence"),
+        ("import json\njson.loads('{')\n", "json.loads", "JSONDecodeError"),
         ("raise SystemExit(3)\n", "SystemExit", "SystemExit"),
         (
             "@hookimpl\ndef newel_tableaux(registry):\n    return {}\n",
@@ -163,6 +164,27 @@ def test_unreadable_metadata_of_a_stranger_stops_nothing(install: Install, tmp_p
     registry = stand()
     assert "mine" in registry.controllers()
     assert registry.find("kutta-4").order == 4
+
+
+def test_a_hook_renamed_to_one_that_newel_lacks_is_refused_and_the_next_plugin_is_not_blamed(
+    install: Install,
+) -> None:
+    install('@hookimpl(specname="newel_pictures")\ndef mine():\n    return {}\n', name="a-first")
+    install('@hookimpl(specname="newel_sinks")\ndef mine(path):\n    return {}\n', name="b-second")
+    install("@hookimpl\ndef newel_sinks():\n    return {'good': print}\n", name="c-third")
+    registry = stand()
+    with pytest.warns(PluginWarning) as caught:
+        assert "good" in registry.sinks()
+    assert [str(warning.message).split()[1] for warning in caught] == ["a-first", "b-second"]
+
+
+def test_one_module_under_two_names_counts_once(install: Install) -> None:
+    module, _ = install("@hookimpl\ndef newel_sinks():\n    return {'good': print}\n")
+    install("", name="twice", value=module)
+    registry = stand()
+    with pytest.warns(PluginWarning, match="twice"):
+        assert registry.sinks().count("good") == 1
+    assert registry.sink("good") is print
 
 
 def test_one_bad_entry_leaves_its_neighbours(install: Install) -> None:
@@ -386,6 +408,28 @@ def test_clashing_names_of_controllers_and_sinks_leave_the_built_in_in_force(ins
         assert registry.sink("csv").__module__.startswith("newel.")
     assert registry.sink_for("a.csv") is registry.sink("csv")
     assert registry.sink_for("a.mine").__name__ == "Mine"
+    problems = [problem for report in registry.plugins() for problem in report.problems]
+    assert len(problems) == 2
+
+
+def test_the_longest_ending_chooses(install: Install) -> None:
+    install(
+        """
+        class Packed:
+            endings = (".gz",)
+
+        class PackedTable:
+            endings = (".csv.gz",)
+
+        @hookimpl
+        def newel_sinks():
+            return {"packed": Packed, "packed-table": PackedTable}
+        """
+    )
+    registry = stand()
+    assert registry.sink_for("a.csv.gz").__name__ == "PackedTable"
+    assert registry.sink_for("a.tar.gz").__name__ == "Packed"
+    assert registry.sink_for("a.csv") is registry.sink("csv")
 
 
 def test_two_plugins_for_one_ending_or_name_must_be_told_apart(install: Install) -> None:

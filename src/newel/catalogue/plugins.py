@@ -201,7 +201,8 @@ def _register(manager: pluggy.PluginManager, plugin: object, name: str) -> tuple
         manager.register(plugin, name)
         manager.check_pending()
     except Exception as error:
-        manager.unregister(plugin) if manager.is_registered(plugin) else None
+        if manager.get_name(plugin) == name:  # what is left of it would be blamed on the next one
+            manager.unregister(plugin)
         return f"was refused: {said(error)}", plugin
     if not manager.get_hookcallers(plugin):
         return f"answers no hook; the hooks are {', '.join(KINDS)}", plugin
