@@ -6,7 +6,7 @@ A plugin author implements one of these protocols; the driver owns loops, limits
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any, Protocol, runtime_checkable
 
 import attrs
@@ -98,7 +98,7 @@ class Head:
     method's slug and digest and the settings of the march, all of it fit for JSON.
     """
 
-    labels: tuple[str, ...]
+    labels: Sequence[str]
     units: tuple[str, ...]
     time_unit: str
     shape: tuple[int, ...]

@@ -11,6 +11,7 @@ from typing import Any
 import numpy as np
 
 from newel.models.checks import bad, nearest
+from newel.models.labels import IndexLabels
 from newel.protocols import Array
 
 __all__ = ["Layout"]
@@ -52,13 +53,9 @@ class Layout:
         self.size: int = ends[-1]
 
     @cached_property
-    def labels(self) -> tuple[str, ...]:
+    def labels(self) -> IndexLabels:
         """A label for each entry in the order of the flat state: `level`, `conc[17]`, `grid[1,2]`."""
-        return tuple(
-            f"{name}[{','.join(map(str, index))}]" if shape else name
-            for name, shape in self.parts.items()
-            for index in np.ndindex(shape)
-        )
+        return IndexLabels(self.parts)
 
     def owners(self) -> Iterator[str]:
         """Yield for each entry of the flat state the name of the part that it belongs to."""

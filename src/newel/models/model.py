@@ -4,16 +4,16 @@ from __future__ import annotations
 
 import html
 import importlib
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from functools import cached_property
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import attrs
-import numpy as np
 
 from newel.models.checks import bad, check_call, check_labels, flag, nearest, number, text_tuple, within_pair
 from newel.models.intake import copy_params, own_state
+from newel.models.labels import IndexLabels
 from newel.protocols import Array, Rate
 
 if TYPE_CHECKING:
@@ -199,15 +199,13 @@ class Model:
         return self.stop > self.start
 
     @cached_property
-    def labels(self) -> tuple[str, ...]:
+    def labels(self) -> Sequence[str]:
         """One text for each entry of the state, in C order."""
         if self._labels:
             return tuple(self._labels)
         if self.layout is not None:
             return self.layout.labels
-        if self.state.ndim == 0:
-            return ("y",)
-        return tuple(f"y[{','.join(map(str, index))}]" for index in np.ndindex(self.state.shape))
+        return IndexLabels({"y": self.state.shape})
 
     @cached_property
     def units(self) -> tuple[str, ...]:

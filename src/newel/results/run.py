@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from html import escape
 from typing import Any
 
@@ -66,7 +66,7 @@ class Run:
     method: str
     digest: str
     settings: Mapping[str, Any]
-    labels: tuple[str, ...]
+    labels: Sequence[str]
     units: tuple[str, ...]
     time_unit: str
     estimator: str

@@ -3,8 +3,8 @@
 The slab is one array of s+1 rows: row 0 the state, rows 1..s the stage rates. Once per attempt the
 coefficients are multiplied by h into a work matrix whose first column stays 1, so that each stage state is
 one product of a row with a prefix of the slab, written in place. Rows, prefixes and buffers are views made
-once; a stage never reads a row that this attempt has not yet written. Wide states go through the same lines
-in pieces that stay in the processor's cache, so that a stage reads each row from memory once.
+once; a stage never reads a row that this attempt has not yet written. What follows the products (error norm,
+compensation) goes over wide states in pieces that stay in the processor's cache.
 """
 
 from __future__ import annotations
@@ -26,8 +26,8 @@ if TYPE_CHECKING:
 
 __all__ = ["NumpyStep", "coefficient_array"]
 
-# Bytes of one row that are worked on at a time: a dozen of them fit into a second-level cache.
-_PIECE = 32_768
+# Bytes of one vector that are worked on at a time: several of them fit into a second-level cache.
+_PIECE = 65_536
 
 _abs, _add, _divide, _maximum = np.abs, np.add, np.divide, np.maximum
 
@@ -111,7 +111,7 @@ class NumpyStep:
         self.state = _read_only(self.slab[0], shape)
         self.new = _read_only(self.new_flat, shape)
         self.rows = [self.slab[i].reshape(shape) for i in range(s + 1)]
-        self._pieces(size, dtype)
+        self._views(size, dtype)
         self.load(state)
 
     def _coefficients(self, tableau: Tableau, estimate: bool) -> None:
@@ -132,51 +132,41 @@ class NumpyStep:
         else:
             self.nodes = [float(c) for c in tableau.nodes]
 
-    def _pieces(self, size: int, dtype: np.dtype[Any]) -> None:
-        """Make every view that the step loop uses, piece by piece of the state."""
+    def _views(self, size: int, dtype: np.dtype[Any]) -> None:
+        """Make every view and buffer that the step loop uses."""
         s, slab = self.stages, self.slab
-        length = max(1, min(size, _PIECE // dtype.itemsize))
-        cuts = [slice(a, min(a + length, size)) for a in range(0, size, length)]
         stage_view = _read_only(self.stage, self.shape)
         self.plan = []
         for i in range(1, s):
             last = self.first_same_as_last and i == s - 1
-            target = self.new_flat if last else self.stage
-            parts = [(slab[: i + 1, cut], target[cut]) for cut in cuts]
-            view = self.new if last else stage_view
-            self.plan.append((self.work[i, : i + 1].dot, parts, self.nodes[i], view, self.rows[i + 1], last))
+            out, view = (self.new_flat, self.new) if last else (self.stage, stage_view)
+            dot = self.work[i, : i + 1].dot
+            self.plan.append((dot, slab[: i + 1], out, self.nodes[i], view, self.rows[i + 1]))
         # The last stage of a first-same-as-last method is not yet there when the new state is formed.
         known = s - 1 if self.first_same_as_last else s
-        self.final_dot = self.work[s, : known + 1].dot
-        self.final_parts = [(slab[: known + 1, cut], self.new_flat[cut]) for cut in cuts]
-        whole = len(cuts) == 1 and self.after_stage is None
-        by_last = self.compensated and self.first_same_as_last
-        self.plain = (
-            [(dot, *parts[0], node, view, row) for dot, parts, node, view, row, _ in self.plan]
-            if whole and not by_last
-            else []
-        )
-        real = np.zeros(0, dtype=dtype).real.dtype
+        self.final_dot, self.final_prefix = self.work[s, : known + 1].dot, slab[: known + 1]
+        self.increment_dot, self.increment_rates = self.work[s, 1 : known + 1].dot, slab[1 : known + 1]
+        self.plain = self.after_stage is None and not (self.compensated and self.first_same_as_last)
+        length = max(1, min(size, _PIECE // dtype.itemsize))
+        self.cuts = [slice(a, min(a + length, size)) for a in range(0, size, length)]
         self.zeros = np.zeros(length, dtype=dtype)
-        self.scratch = np.zeros(length, dtype=dtype)
-        self.scale = np.zeros(length, dtype=real)
-        quotient = np.float64 if real == np.dtype(np.float32) else real
-        self.quotient = np.zeros(length, dtype=quotient)
-        self.cuts = cuts
         if self.compensated:
-            self.increment_dot = self.work[s, 1 : known + 1].dot
-            self.increment_rates = slab[1 : known + 1]
             self.carry, self.next_carry = np.zeros(size, dtype=dtype), np.zeros(size, dtype=dtype)
         if self.has_estimate:
-            self.error_dot = self.work[s + 1, 1:].dot
-            self.size_before, self.size_after = np.zeros(size, dtype=real), np.zeros(size, dtype=real)
-            self.tame = 0.0 if dtype.kind == "c" else float(np.finfo(real).max) ** 0.5
-            self.error_parts = []
-            for cut in cuts:
-                n = cut.stop - cut.start
-                buffers = self.scratch[:n], self.scale[:n], self.quotient[:n]
-                place = None if len(cuts) == 1 else cut
-                self.error_parts.append((slab[1:, cut], self.new_flat[cut], *buffers, place))
+            self._error_views(size, length, dtype)
+
+    def _error_views(self, size: int, length: int, dtype: np.dtype[Any]) -> None:
+        real = np.zeros(0, dtype=dtype).real.dtype
+        quotient = np.zeros(length, dtype=np.float64 if real == np.dtype(np.float32) else real)
+        scale = np.zeros(length, dtype=real)
+        self.error_dot, self.error_rates = self.work[self.stages + 1, 1:].dot, self.slab[1:]
+        self.size_before, self.size_after = np.zeros(size, dtype=real), np.zeros(size, dtype=real)
+        self.tame = 0.0 if dtype.kind == "c" else float(np.finfo(real).max) ** 0.5
+        # The stage's buffer is free once the stages are done: the error estimate goes there.
+        self.error_parts = [
+            (self.stage[c], self.new_flat[c], scale[: c.stop - c.start], quotient[: c.stop - c.start], c)
+            for c in self.cuts
+        ]
 
     def load(self, state: Array) -> None:
         """Start anew from this state, shape and dtype as at first; the rate at it is not known yet."""
@@ -223,11 +213,11 @@ class NumpyStep:
         # The rate is called and judged right here: a function between costs as much as the product.
         call, fit, shape, dtype, ndarray = self.rate.call, self.rate.fit, self.shape, self.dtype, np.ndarray
         if self.rate.in_place:
-            for dot, prefix, out, node, view, row in self.plain:
+            for dot, prefix, out, node, view, row in self.plan:
                 dot(prefix, out)
                 call(t + node * h, view, row)
             return
-        for dot, prefix, out, node, view, row in self.plain:
+        for dot, prefix, out, node, view, row in self.plan:
             dot(prefix, out)
             result = call(t + node * h, view)
             if result.__class__ is ndarray and result.dtype is dtype and result.shape == shape:
@@ -238,35 +228,30 @@ class NumpyStep:
     def _careful_stages(self, t: Any, h: Any, ceiling: Any) -> None:
         """The stages with all that can be asked for: pieces, compensation, a ceiling, a look at each."""
         evaluate, after_stage, floor = self.evaluate, self.after_stage, self.floor
-        for dot, parts, node, view, row, last in self.plan:
-            if last:
+        for dot, prefix, out, node, view, row in self.plan:
+            if out is self.new_flat:
                 self._combine_final()
             else:
-                for prefix, out in parts:
-                    dot(prefix, out)
+                dot(prefix, out)
             time = t + node * h
             if ceiling is not None and (time - ceiling) * h > 0:
                 time = ceiling
             elif floor is not None and (time - floor) * h < 0:
                 time = floor
             if after_stage is not None:
-                self._replace(self.new_flat if last else self.stage, after_stage(time, view))
+                self._replace(out, after_stage(time, view))
             evaluate(time, view, row)
 
     def _combine_final(self) -> None:
-        if self.compensated:
-            self._combine_compensated()
+        """Form the new state, with what the last sums lost where they are compensated."""
+        if not self.compensated:
+            self.final_dot(self.final_prefix, self.new_flat)
             return
-        dot = self.final_dot
-        for prefix, out in self.final_parts:
-            dot(prefix, out)
-
-    def _combine_compensated(self) -> None:
-        dot, slab, rates, scratch = self.increment_dot, self.slab, self.increment_rates, self.scratch
+        increments = self.stage
+        self.increment_dot(self.increment_rates, increments)
         for cut in self.cuts:
-            state, new, lost = slab[0, cut], self.new_flat[cut], self.next_carry[cut]
-            increment = scratch[: len(state)]
-            dot(rates[:, cut], increment)
+            state, new, lost = self.slab[0, cut], self.new_flat[cut], self.next_carry[cut]
+            increment = increments[cut]
             np.subtract(increment, self.carry[cut], increment)
             np.add(state, increment, new)
             np.subtract(new, state, lost)
@@ -296,35 +281,33 @@ class NumpyStep:
             _abs(self.slab[0], self.size_before)
             self.sizes_known = True
         self.sizes_made = True
-        total, dot, tame = 0.0, self.error_dot, self.tame
-        before, after, one = self.size_before, self.size_after, ratio.size == 1
-        for rates, new, error, scale, quotient, cut in self.error_parts:
-            dot(rates, error)
+        self.error_dot(self.error_rates, self.stage)
+        total, tame, one = 0.0, self.tame, len(self.cuts) == 1
+        before, after, all_alike = self.size_before, self.size_after, ratio.size == 1
+        for error, new, scale, quotient, cut in self.error_parts:
             # Sizes far from overflow cannot raise a floating-point warning; guarding costs more than asking.
             if not (tame and error.dot(error) < tame and new.dot(new) < tame):
                 total += self._wild_square(error, new, ratio, cut)
                 continue
-            if cut is None:
+            if one:
                 _abs(new, after)
                 _maximum(before, after, out=scale)
                 _add(scale, ratio, scale)
             else:
                 _abs(new, after[cut])
                 _maximum(before[cut], after[cut], out=scale)
-                _add(scale, ratio if one else ratio[cut], scale)
+                _add(scale, ratio if all_alike else ratio[cut], scale)
             _divide(error, scale, quotient)
             total += quotient.dot(quotient)
         return math.sqrt(total / self.count) / rel_tol
 
-    def _wild_square(self, error: Array, new: Array, ratio: Array, cut: slice | None) -> float:
+    def _wild_square(self, error: Array, new: Array, ratio: Array, cut: slice) -> float:
         """The same for complex numbers, and for what may overflow or be no number."""
-        piece = slice(0, self.count) if cut is None else cut
         with np.errstate(all="ignore"):
-            np.abs(new, self.size_after[piece])
-            scale = np.maximum(self.size_before[piece], self.size_after[piece])
-            quotient = np.abs(error).astype(self.quotient.dtype) / (
-                scale + (ratio if ratio.size == 1 else ratio[piece])
-            )
+            np.abs(new, self.size_after[cut])
+            scale = np.maximum(self.size_before[cut], self.size_after[cut])
+            scale += ratio if ratio.size == 1 else ratio[cut]
+            quotient = np.abs(error).astype(np.result_type(scale, np.float64)) / scale
             return float(quotient.dot(quotient))
 
     def error_and_scale(self, rel_tol: float, abs_tol: Array) -> tuple[Array, Array]:
@@ -338,7 +321,10 @@ class NumpyStep:
         """Whether every entry of the new state is a number; a zero times it is then zero."""
         if self.dtype == np.dtype(object):
             return True
-        return all(self.zeros[: c.stop - c.start].dot(self.new_flat[c]) == 0 for c in self.cuts)
+        zeros, new = self.zeros, self.new_flat
+        if len(self.cuts) == 1:
+            return bool(zeros.dot(new) == 0)
+        return all(zeros[: c.stop - c.start].dot(new[c]) == 0 for c in self.cuts)
 
     def accept(self) -> None:
         """Make the new state the state; keep the rate at it where the last stage is the next first."""

@@ -109,7 +109,7 @@ def _head(head: Head) -> dict[str, Any]:
         "digest": None,
         **head.about,
         "columns": columns(head),
-        "labels": head.labels,
+        "labels": list(head.labels),
         "units": head.units,
         "time_unit": head.time_unit,
         "shape": head.shape,
