@@ -11,12 +11,19 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from newel import errors as errors
     from newel import testing as testing
+    from newel.catalogue.access import find as find
+    from newel.catalogue.access import names as names
+    from newel.catalogue.access import plugins as plugins
+    from newel.catalogue.access import read_tableau as read_tableau
+    from newel.catalogue.access import register as register
     from newel.catalogue.checking import check as check
+    from newel.catalogue.inspection import inspect as inspect
     from newel.catalogue.registry import Registry as Registry
     from newel.errors import MarchFailed as MarchFailed
     from newel.errors import MarchInterrupted as MarchInterrupted
     from newel.errors import NewelError as NewelError
     from newel.errors import NewelWarning as NewelWarning
+    from newel.guide import guide as guide
     from newel.marching.march import march as march
     from newel.marching.one_step import one_step as one_step
     from newel.marching.stepper import Stepper as Stepper
@@ -53,9 +60,16 @@ _WHERE = {
     "Tableau": "newel.methods.tableau",
     "check": "newel.catalogue.checking",
     "examine": "newel.models.examine",
+    "find": "newel.catalogue.access",
+    "guide": "newel.guide",
+    "inspect": "newel.catalogue.inspection",
     "load_model": "newel.models.loading",
     "march": "newel.marching.march",
+    "names": "newel.catalogue.access",
     "one_step": "newel.marching.one_step",
+    "plugins": "newel.catalogue.access",
+    "read_tableau": "newel.catalogue.access",
+    "register": "newel.catalogue.access",
     "write_tableau": "newel.methods.tableau_file",
 }
 _MODULES = {

@@ -40,7 +40,9 @@ def topics() -> dict[str, str]:
         >>> topics()["march-a-model"]
         'March a model'
     """
-    found = sorted(file.name.removesuffix(".md") for file in files(__name__).iterdir() if _is_guide(file.name))
+    found = sorted(
+        file.name.removesuffix(".md") for file in files(__name__).iterdir() if _is_guide(file.name)
+    )
     return {name: _text(name).partition("\n")[0].lstrip("# ") for name in found}
 
 
