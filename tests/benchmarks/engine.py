@@ -1,4 +1,4 @@
-"""The step of the NumPy engine: its overhead beside SciPy's, and its traffic beside the memory's bandwidth."""
+"""The step of the NumPy engine: overhead beside SciPy, traffic beside the memory's bandwidth."""
 
 from __future__ import annotations
 
