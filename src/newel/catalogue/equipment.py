@@ -9,11 +9,11 @@ from typing import TYPE_CHECKING, Any
 from newel.catalogue.offers import call_with, load_named
 from newel.catalogue.suggestions import unknown_name
 from newel.errors import BadRequest, SlugTaken, UnknownName
-from newel.protocols import Controller, Sink
 
 if TYPE_CHECKING:
     from newel.catalogue.plugins import Offer
     from newel.catalogue.shelves import Shelves
+    from newel.protocols import Controller, Sink
 
 __all__ = ["Equipment"]
 
@@ -27,6 +27,8 @@ class Equipment:
 
     def controller(self, spec: str | Controller, arguments: dict[str, Any]) -> Controller:
         """Return a controller by name, or the ready one that was given; see `Registry.controller`."""
+        from newel.protocols import Controller  # with NumPy, which a list of names does without
+
         if isinstance(spec, str):
             what = f"controller {spec!r}"
             made = call_with(self._factory("controller", spec), what, arguments)
