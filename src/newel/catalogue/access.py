@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Collection, Iterable
 from pathlib import Path
 from typing import TYPE_CHECKING, Literal, overload
@@ -19,6 +20,9 @@ __all__ = ["SORTS", "find", "names", "plugins", "read_tableau", "register"]
 
 SORTS = ("order", "stages", "slug", "year", "floor")
 """By what a list of methods can be sorted."""
+
+
+_KIND = re.compile(r"runge\W*kutta", re.IGNORECASE)
 
 
 def find(method: str | Path | Tableau, registry: Registry | None = None) -> Tableau:
@@ -144,7 +148,7 @@ def names(
         BadRequest: `sort` is none of these.
 
     Example:
-        >>> names(order=range(3, 5), text="Kutta", sort="slug")[:3]
+        >>> names(order=range(3, 5), text="Kutta", embedded=False)
         ('kutta-3', 'kutta-4', 'kutta-three-eighths-4')
     """
     if sort is not None and sort not in SORTS:
@@ -177,8 +181,9 @@ def _fits(value: int, wanted: int | Collection[int] | None) -> bool:
 
 def _mentions(summary: Summary, text: str | None) -> bool:
     said: Iterable[str] = (summary.slug, summary.name, *summary.also_called, *summary.authors)
-    everything = " ".join(map(folded, said))
-    return all(folded(word) in everything for word in (text or "").split())
+    # "Runge–Kutta" is the name of the whole kind: looking for Kutta must not find every one of them.
+    everything = " ".join(folded(_KIND.sub("", each)) for each in said)
+    return all(folded(word) in everything for word in _KIND.sub("", text or "").split())
 
 
 def _rank(summary: Summary, sort: str) -> tuple[float | str, ...]:

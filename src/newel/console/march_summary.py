@@ -23,7 +23,7 @@ _MOST_EVENTS = 12
 
 @attrs.frozen
 class Summary:
-    """A run beside what was asked for: the model by name and itself, the method, the files, what stopped it."""
+    """A run beside what was asked for: model, method and files; and the error that ended it, or None."""
 
     named: str
     model: Model
