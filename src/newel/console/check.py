@@ -10,10 +10,12 @@ import attrs
 
 from newel.console.lookup import method_name, proof_progress, registry_of
 from newel.console.screen import Screen
-from newel.console.words import OUTCOME_STYLES, claims, count, filled
+from newel.console.words import OUTCOME_STYLES, claims, count, filled, orders
 from newel.errors import BadRequest, BadTableau, NewelError, SlugTaken
 
 if TYPE_CHECKING:
+    from rich.table import Table
+
     from newel.catalogue.registry import Registry
     from newel.methods.order_conditions import Verdict
 
@@ -96,33 +98,55 @@ def _check(text: str, registry: Registry, anew: bool, progress: Any) -> _Checked
 
 
 def draw(screen: Screen, checked: Sequence[_Checked]) -> None:
-    """Draw a line for each method, what one must know of it, and the sum of several."""
+    """Draw one method in full; of several a table, what is wrong with those that fail, and the sums."""
     from rich.text import Text
 
     proved = [(each.slug or "", each.verdict) for each in checked if each.verdict is not None]
-    widest = max((len(slug) for slug, _ in proved), default=0)
+    if len(checked) == 1:
+        for slug, verdict in proved:
+            digits = "" if verdict.digits is None else f", {verdict.digits} digits are trusted"
+            said = f"order {claims(verdict)}{digits}, in float64 to {verdict.working_floor:.1e}"
+            outcome = (verdict.outcome, OUTCOME_STYLES[verdict.outcome])
+            screen.draw(Text.assemble((slug, "bold"), "\n  ", outcome, ": ", said))
+            draw_details(screen, verdict)
+        return
+    if proved:
+        screen.draw(_table(proved), "")
     for slug, verdict in proved:
-        said = f"  order {claims(verdict)}, float64 to {verdict.working_floor:.1e}"
-        digits = "" if verdict.digits is None else f", {verdict.digits} digits trusted"
-        outcome = (f"{verdict.outcome:<7}", OUTCOME_STYLES[verdict.outcome])
-        screen.draw(Text.assemble((f"{slug:<{widest}}", "bold"), "  ", outcome, said, digits))
-        draw_details(screen, verdict, all_remarks=len(checked) == 1)
-    if len(checked) > 1:
-        sums = [f"{sum(v.outcome == name for _, v in proved)} {name}" for name in ("exact", "rounded")]
-        bad = len(checked) - len(proved)
-        unread = f", {bad} cannot be read" if bad else ""
-        failing = sum(not verdict for _, verdict in proved)
-        screen.write(
-            f"{count(len(checked), 'method')}: {', '.join(sums)}, {failing} {_fail(failing)}{unread}."
+        if not verdict:
+            screen.draw(Text.assemble((slug, "bold"), "  ", (verdict.outcome, OUTCOME_STYLES["fails"])))
+            draw_details(screen, verdict)
+    exact, rounded = (sum(v.outcome == name for _, v in proved) for name in ("exact", "rounded"))
+    failing, unread = sum(not verdict for _, verdict in proved), len(checked) - len(proved)
+    words = [f"{exact} exact", f"{rounded} rounded", f"{failing} {'fails' if failing == 1 else 'fail'}"]
+    words += [f"{unread} cannot be read"] if unread else []
+    screen.write(f"{count(len(checked), 'method')}: {', '.join(words)}.")
+
+
+def _table(proved: Sequence[tuple[str, Verdict]]) -> Table:
+    from rich import box
+    from rich.table import Table
+    from rich.text import Text
+
+    table = Table(box=box.SIMPLE_HEAD, pad_edge=False, padding=(0, 1, 0, 0), show_edge=False)
+    table.add_column("slug", style="bold", overflow="fold")
+    table.add_column("proof", no_wrap=True)
+    for title in ("order", "cont.", "floor", "digits"):
+        table.add_column(title, justify="right", no_wrap=True)
+    for slug, verdict in proved:
+        table.add_row(
+            slug,
+            Text(verdict.outcome, style=OUTCOME_STYLES[verdict.outcome]),
+            orders(verdict.order, verdict.embedded_order),
+            "" if verdict.continuous_order is None else str(verdict.continuous_order),
+            f"{verdict.working_floor:.1e}",
+            "" if verdict.digits is None else str(verdict.digits),
         )
+    return table
 
 
-def _fail(number: int) -> str:
-    return "fails" if number == 1 else "fail"
-
-
-def draw_details(screen: Screen, verdict: Verdict, all_remarks: bool = True) -> None:
-    """Draw each failing condition, and the remarks where they are wanted or something fails."""
+def draw_details(screen: Screen, verdict: Verdict) -> None:
+    """Draw each failing condition, and what a reader would trip over."""
     from rich.text import Text
 
     width = screen.console.width
@@ -132,7 +156,7 @@ def draw_details(screen: Screen, verdict: Verdict, all_remarks: bool = True) -> 
     remarks = [*verdict.remarks]
     if verdict.undetermined:
         remarks.append(f"not determined by the claimed orders: {', '.join(verdict.undetermined)}")
-    for line in remarks if all_remarks or not verdict else ():
+    for line in remarks:
         screen.draw(filled(line, width, "  - ", "    "))
 
 

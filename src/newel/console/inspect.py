@@ -52,7 +52,7 @@ def draw(screen: Screen, found: Inspection) -> None:
     from newel.console.triangle import as_text
 
     width, tableau = screen.console.width, found.tableau
-    screen.draw(Text.assemble((tableau.slug, "bold"), f"   {tableau.name}"))
+    screen.draw(Text.assemble((tableau.slug, "bold"), f"\n  {tableau.name}"))
     for label, text in _whose(tableau):
         if text:
             screen.draw(filled(" ".join(text.split()), width, f"  {label:<14} ", " " * 17))

@@ -78,7 +78,7 @@ def draw(screen: Screen, shown: Summary) -> None:
     for label, text in _facts(shown):
         screen.draw(filled(text, width, f"  {label:<9} ", " " * 12))
     for line in _state(shown):
-        screen.draw(Text(line, no_wrap=True, overflow="ignore"))
+        screen.draw(line)
     for note in shown.run.notes:
         at = "" if note.time is None else f"at t = {_time(shown, note.time)}: "
         text = " ".join(f"{at}{note.text}".split())

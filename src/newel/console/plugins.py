@@ -49,7 +49,7 @@ def draw(screen: Screen, reports: tuple[PluginReport, ...]) -> None:
 
     for report in reports:
         where = "" if report.origin.where in ("", report.origin.name) else f"   {report.origin.where}"
-        screen.draw(Text.assemble((str(report.origin), "bold"), where, no_wrap=True, overflow="ignore"))
+        screen.draw(Text.assemble((str(report.origin), "bold"), where))
         for kind in _KINDS:
             names = getattr(report, kind)
             if names:
@@ -58,10 +58,10 @@ def draw(screen: Screen, reports: tuple[PluginReport, ...]) -> None:
         if not any(getattr(report, kind) for kind in _KINDS):
             screen.draw("  brings nothing")
         for problem in report.problems:
-            first, *rest = problem.splitlines()
-            screen.draw(Text(f"  left out     {first}", style="red", no_wrap=True, overflow="ignore"))
-            for line in rest:
-                screen.draw(Text(f"               {line.strip()}", no_wrap=True, overflow="ignore"))
+            for number, line in enumerate(problem.splitlines()):
+                head = "  left out     " if number == 0 else " " * 15
+                lines = filled(" ".join(line.split()), screen.console.width, head, " " * 15)
+                screen.draw(Text(lines, style="red" if number == 0 else ""))
     problems = sum(len(report.problems) for report in reports)
     what = f"{count(problems, 'problem')}" if problems else "no problems"
     screen.write(f"{count(len(reports), 'origin')}, {what}.")

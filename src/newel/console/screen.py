@@ -62,10 +62,12 @@ class Screen:
         return self._console
 
     def draw(self, *things: Any) -> None:
-        """Draw rich renderables, or texts, as results."""
+        """Draw rich renderables, or texts, as results; the lines of a text stay as they are."""
+        from rich.text import Text
+
         with self.console.capture() as capture:
             for thing in things:
-                self.console.print(thing)
+                self.console.print(thing, soft_wrap=isinstance(thing, (str, Text)))
         lines = capture.get().split("\n")
         self._put("\n".join(line.rstrip() for line in lines))
 

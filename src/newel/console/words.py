@@ -39,6 +39,7 @@ def filled(text: str, width: int, first: str, rest: str) -> str:
         initial_indent=first,
         subsequent_indent=rest,
         break_on_hyphens=False,
+        break_long_words=False,
     )
     return wrapper.fill(text) or first.rstrip()
 
@@ -54,7 +55,7 @@ def value(found: Any) -> str:
     if isinstance(found, tuple):
         return ", ".join(map(value, found))
     text = str(found)
-    return text if isinstance(found, (int, str)) or len(text) <= 30 else f"≈ {float(found):.12g}"
+    return text if isinstance(found, (int, str)) or len(text) <= 30 else f"≈{float(found):.12g}"
 
 
 def in_columns(texts: Sequence[str], width: int, indent: str) -> Iterator[str]:
