@@ -1,7 +1,7 @@
 """`python -m tests.benchmarks`: every speed figure, as a table and, with `--json FILE`, as JSON.
 
-`OPENBLAS_CORETYPE` and `OPENBLAS_L2_SIZE` slow NumPy down where a machine sets them; they are taken out of the
-environment first, in a new process, for a library reads them when it is loaded.
+`OPENBLAS_CORETYPE` and `OPENBLAS_L2_SIZE` slow NumPy down where a machine sets them; they are taken out of
+the environment first, in a new process, for a library reads them when it is loaded.
 """
 
 from __future__ import annotations
