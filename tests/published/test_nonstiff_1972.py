@@ -12,9 +12,11 @@ import math
 from functools import cache
 from typing import Any
 
+import numpy as np
 import pytest
+from scipy.integrate import solve_ivp
 
-from tests.problems.nonstiff_1972 import NONSTIFF
+from tests.problems.nonstiff_1972 import NONSTIFF, STOP, references
 from tests.problems.nonstiff_table import march_one, pairs, read_table, tolerances_of
 
 PAIRS = pairs()
@@ -110,3 +112,26 @@ def test_every_pair_on_one_problem_of_each_class(slug: str, name: str) -> None:
 def test_chosen_pairs_on_all_problems(slug: str) -> None:
     for name in NONSTIFF:
         assert_as_committed(slug, name)
+
+
+@pytest.mark.parametrize(
+    ("slug", "method"),
+    [("bogacki-shampine-3-2", "RK23"), ("dormand-prince-5-4", "RK45")],
+    ids=lambda text: text,
+)
+def test_scipy_with_the_same_tableau_takes_about_as_many_calls_for_about_the_error(
+    slug: str, method: str
+) -> None:
+    """SciPy at 1e-6 on all 25 problems; other controllers, so factors, not figures (common practice: two)."""
+    calls, errors = [], []
+    for name, problem in NONSTIFF.items():
+        solved = solve_ivp(problem.rate, (0.0, STOP), problem.state, method=method, rtol=1e-6, atol=1e-6)
+        expected = references(name)[STOP]
+        error = np.max(np.abs(solved.y[:, -1] - expected) / (1e-6 * (1.0 + np.abs(expected))))
+        figure = table()[slug]["problems"][name]["1e-6"]
+        calls.append(figure["calls"] / solved.nfev)
+        errors.append(figure["error"] / error)
+    assert 0.5 < min(calls)
+    assert max(calls) < 2.0
+    assert np.median(errors) < 2.0
+    assert max(errors) < 20.0
