@@ -19,7 +19,7 @@ __all__ = ["CannotGoOn", "blame", "kept", "not_finite", "outside"]
 
 _HOME = str(Path(__file__).resolve().parent.parent)
 # The modules that call the user's functions.
-_CALLERS = ("rate_call.py", "crossings.py", "pacing.py")
+_CALLERS = ("rate_call.py", "numpy_step.py", "crossings.py", "pacing.py")
 
 
 class CannotGoOn(Exception):
@@ -33,7 +33,7 @@ class CannotGoOn(Exception):
 def kept(rows: int, time: Any) -> str:
     """Return the line that says what was computed before the failure."""
     steps = "1 step" if rows == 1 else f"{rows:,} steps"
-    return f"  Kept: {steps} up to t = {time:g} (error.run)." if rows else "  No step was made."
+    return f"  Kept: {steps} up to t = {float(time):g} (error.run)." if rows else "  No step was made."
 
 
 def not_finite(step: NumpyStep, model: Model, t: Any, h: Any) -> str:
@@ -57,6 +57,7 @@ def not_finite(step: NumpyStep, model: Model, t: Any, h: Any) -> str:
 
 def outside(model: Model, state: Any, t: Any) -> str:
     """Return the first line for a state outside the model's `within`."""
+    t = float(t)
     if model.within is None or callable(model.within):
         return f"the state leaves within at t = {t:g}"
     low, high = model.within
@@ -64,7 +65,7 @@ def outside(model: Model, state: Any, t: Any) -> str:
     entry = int(wrong[0]) if wrong.size else 0
     value = state.reshape(-1)[entry]
     place = f"entry {entry + 1} of {state.size}"
-    return f"{model.labels[entry]!r} = {value:g} leaves within at t = {t:g} ({place})"
+    return f"{model.labels[entry]!r} = {float(value):g} leaves within at t = {t:g} ({place})"
 
 
 def _spelled(value: Any) -> str:

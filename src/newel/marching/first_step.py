@@ -64,7 +64,9 @@ def first_step(
     if not math.isfinite(change):
         return max(trial * 0.01, small)
     if speed > 0.0 and change > 0.0:
-        wanted = (0.01 / (speed * (change / speed) ** (order - 1))) ** (1.0 / order)
+        # In parts of the span, so that a power of two in the unit of time changes no bit.
+        bend = change * span / speed
+        wanted = span * (0.01 / (speed * span * bend ** (order - 1))) ** (1.0 / order)
     elif change > 0.0:
         wanted = math.sqrt(0.01 / change)
     else:

@@ -5,6 +5,7 @@
 
 from __future__ import annotations
 
+import logging
 import math
 from fractions import Fraction
 from typing import TYPE_CHECKING, Any
@@ -33,6 +34,8 @@ if TYPE_CHECKING:
 
 __all__ = ["Loop", "Saved"]
 
+log = logging.getLogger("newel")
+
 # Measured and common practice: a stage that is no number, or a state outside its limits, quarters the step.
 _QUARTER, _MOST_QUARTERINGS = 0.25, 10
 _STRETCH, _FEWEST_SPACINGS, _SAME_PLACE = 1.01, 4.0, 4.0
@@ -55,8 +58,10 @@ class Saved:
     floor: Any
     params: Any
     counters: tuple[int, int, int]
-    events: int
-    notes: int
+    events: tuple[EventRecord, ...]
+    notes: tuple[Note, ...]
+    ended_by: str | None
+    crowded: int
 
 
 class Loop:
@@ -97,6 +102,7 @@ class Loop:
         self.events: list[EventRecord] = []
         self.ended_by: str | None = None
         self.pending: Any = None
+        self.alias: tuple[Any, Any] | None = None
         self.switches = Switches()
         self.adaptive = isinstance(rule, Adaptive)
         self.order = min(tableau.order, tableau.embedded_order or 0) + 1 if self.adaptive else 0
@@ -112,6 +118,8 @@ class Loop:
             after_stage=None if model.after_stage is None else self._after_stage,
         )
         self.breaks = breaks_inside(model)
+        self.stop_breaks = not self.exact_time and self.stop in model.breaks
+        self.reach = max(self.step.nodes)
         self.break_index = 0
         self.wall: Any = self._break_ahead()
         self.crossings = Crossings(model.events, self.extra)
@@ -123,7 +131,7 @@ class Loop:
     def prepare(self) -> None:
         """Make the first rate call, arm the events, and choose the first step."""
         step = self.step
-        if not self._inside(step.state):
+        if not self._inside(self.time, step.state):
             raise BadModel(outside(self.model, step.state, self.time) + ", at the start", argument="within")
         if self.time in self.model.breaks and not self.exact_time:
             step.floor = just_after(self.time, self.direction)
@@ -148,7 +156,7 @@ class Loop:
         assert self.limits is not None
         rel_tol, ratio, norm, smallest, largest = self.limits
         if rule.first is not None:
-            return min(rule.first, largest)
+            return min(float(rule.first), largest)
         span = abs(self.wall - self.time)
         abs_tol = ratio * rel_tol
         length = first_step(self.step, self.time, span, self.direction, self.order, rel_tol, abs_tol, norm)
@@ -168,18 +176,29 @@ class Loop:
         else:
             t, h = self._paced_step(landing)
         label = ""
+        records: list[EventRecord] = []
         if self.has_events:
-            t, label = self.switches.look(self, t, h)
-        self._commit(t, restart=bool(label))
+            t, label, records = self.switches.look(self, t, h)
+        self._commit(t, records, restart=bool(label))
         return label
 
     def ceiling(self, t: Any) -> Any:
-        """The last time before a break, for a step that ends on it."""
-        return just_before(t, self.direction) if t == self.wall and t != self.stop else None
+        """The last time before a break, for a step to t whose stages would reach it.
 
-    def _paced_step(self, landing: float | None) -> tuple[Any, Any]:
+        At the model's stop the last time is stop itself, whatever t + h rounds to.
+        """
+        wall = self.wall
+        if wall == self.stop and not self.stop_breaks:
+            return wall if t == wall and self.reach <= 1 and not self.exact_time else None
+        reached = t if self.reach <= 1 else self.time + self.reach * (t - self.time)
+        return just_before(wall, self.direction) if (reached - wall) * self.direction >= 0 else None
+
+    def _paced_step(self, landing: Any) -> tuple[Any, Any]:
         ahead, h = self.pace.target(self.time, self.step.state)
         wall = self.wall
+        self.alias = None
+        if landing is not None and self.exact_time:
+            landing = Fraction(landing)
         if landing is not None and (landing - wall) * self.direction < 0:
             wall = landing
         if wall != ahead and not self.exact_time:
@@ -187,14 +206,14 @@ class Loop:
             same = abs(gap) <= _SAME_PLACE * max(spacing(wall), spacing(self.time))
             if same and ahead != self.stop:
                 # A break that rounding sets beside a grid point is that grid point.
-                self.pace.reached(ahead)
+                self.alias = wall, ahead
             if gap < 0 or same:
                 ahead, h = wall, wall - self.time
         self.step.attempt(self.time, h, self.ceiling(ahead))
         if not self.step.new_is_finite():
             self.refuse_not_finite(h)
-        if not self._inside(self.step.new):
-            raise CannotGoOn("within", outside(self.model, self.step.new, ahead), "  Take a smaller step.")
+        if self.has_within:
+            self.refuse_outside(ahead)
         return ahead, h
 
     def _adaptive_step(self, landing: float | None) -> tuple[float, float]:
@@ -206,7 +225,7 @@ class Loop:
         if landing is not None and (landing - wall) * self.direction < 0:
             wall = landing
         remaining = (wall - time) * self.direction
-        quarterings, rejected_here = 0, 0
+        quarterings, rejected_here, error, h = 0, 0, math.nan, 0.0
         while True:
             wanted = length = self.next_step
             lands = wanted * _STRETCH >= remaining
@@ -215,44 +234,64 @@ class Loop:
             elif 2.0 * wanted > remaining:
                 length = 0.5 * remaining
             ahead = wall if lands else time + length * self.direction
-            if not lands and length < max(smallest, _FEWEST_SPACINGS * spacing(time)):
-                raise self._underflow(length, rejected_here)
+            if not lands and wanted < max(smallest, _FEWEST_SPACINGS * spacing(time)):
+                if quarterings:
+                    raise self._no_way(error, h, quarterings)
+                raise self._underflow(wanted, rejected_here)
             h = ahead - time
-            step.attempt(time, h, self.ceiling(ahead) if lands else None)
+            step.attempt(time, h, self.ceiling(ahead) if lands or self.reach > 1 else None)
             error = step.error_norm(rel_tol, ratio, norm)
-            if not error < math.inf or (self.has_within and not self._inside(step.new)):
+            if not error < math.inf or (self.has_within and not self._inside(ahead, step.new)):
                 quarterings += 1
                 self.rejected += 1
+                log.debug("rejected at t = %r: step %r, not finite or not within", time, length)
                 if quarterings == _MOST_QUARTERINGS:
-                    raise self._no_way(error, h)
+                    raise self._no_way(error, h, quarterings)
                 self.next_step = length * _QUARTER
                 continue
-            accepted, factor, self.memory = controller.decide(error, length, self.order, self.memory)
+            accepted, factor, memory = controller.decide(error, length, self.order, self.memory)
+            if not 0.0 < factor < (math.inf if accepted else 1.0):
+                raise self._bad_factor(accepted, factor)
             if accepted:
                 break
+            self.memory = memory
             self.rejected += 1
             rejected_here += 1
-            self.next_step = length * factor
-        following = length * factor
-        if length < wanted and not rejected_here and not quarterings and following < wanted:
-            # The step was cut to land, not because of its error: the proposal before still stands.
-            following = wanted
+            log.debug("rejected at t = %r: step %r, error norm %r", time, length, error)
+            self.next_step = length * float(factor)
+        following = length * float(factor)
+        cut = length < wanted and not rejected_here and not quarterings
+        if not cut or error * (wanted / length) ** self.order > 1.0:
+            self.memory = memory
+        else:
+            # Cut to land, and its error allows for what was wanted: that stands, and the cut is forgotten.
+            following = max(following, wanted)
         self.next_step = min(following, largest)
         return ahead, h
 
-    def _inside(self, state: Array) -> bool:
+    def _bad_factor(self, accepted: bool, factor: Any) -> CannotGoOn:
+        assert self.controller is not None
+        verdict = "accepted" if accepted else "rejected"
+        return CannotGoOn(
+            "controller",
+            f"controller {self.controller.name!r} {verdict} the step at t = {self.time!r}, factor {factor!r}",
+            "  A factor is positive and finite, and below 1 where the step is rejected.",
+        )
+
+    def _inside(self, t: Any, state: Array) -> bool:
         within = self.model.within
         if within is None:
             return True
         if callable(within):
-            return bool(within(self.time, state, *self.extra))
+            return bool(within(t, state, *self.extra))
         return bool(((state >= within[0]) & (state <= within[1])).all())
 
     def _advice(self) -> str:
         return f"  {where_defined(self.model.rate)}"
 
-    def _no_way(self, error: float, h: float) -> CannotGoOn:
-        words = f"  The step was quartered {_MOST_QUARTERINGS} times.  {where_defined(self.model.rate)}"
+    def _no_way(self, error: float, h: float, quarterings: int) -> CannotGoOn:
+        often = "once" if quarterings == 1 else f"{quarterings} times"
+        words = f"  The step was quartered {often}.  {where_defined(self.model.rate)}"
         if error < math.inf:
             return CannotGoOn("within", outside(self.model, self.step.new, self.time + h), words)
         return CannotGoOn("not finite", not_finite(self.step, self.model, self.time, h), words)
@@ -269,19 +308,25 @@ class Loop:
             "model's own noise does this.",
         )
 
-    def _commit(self, t: Any, restart: bool) -> None:
+    def _commit(self, t: Any, records: list[EventRecord], restart: bool) -> None:
         """Make the attempted step the state; a Ctrl-C in here is finished by `settle`."""
-        at_break = (t - self.wall) * self.direction >= 0 and self._pass_breaks(t)
-        self.last_step = t - self.time
-        self.pending = (t, self.accepted + 1)
+        last_step = t - self.time
+        self.pending = (t, self.accepted + 1, records)
         self.step.accept()
-        self.time, self.accepted = self.pending
+        self.time, self.accepted, _ = self.pending
+        if records:
+            self._record(records)
         self.pending = None
+        self.last_step = last_step
+        at_break = (t - self.wall) * self.direction >= 0 and self._pass_breaks(t)
         if not self.adaptive:
-            self.pace.reached(t)
+            self.pace.reached(self.alias[1] if self.alias is not None and t == self.alias[0] else t)
         after_step = self.model.after_step
         if after_step is not None:
             self._after_step(after_step(t, self.step.state, *self.extra))
+            if self.extra:
+                # It may have written to the params: the rate at the new state is not what it was.
+                self.step.fresh = False
         if at_break or restart:
             self.step.fresh = False
             if at_break:
@@ -289,6 +334,14 @@ class Loop:
                 self.step.floor = just_after(t, self.direction)
             if self.controller is not None:
                 self.memory = self.controller.start()
+
+    def _record(self, records: list[EventRecord]) -> None:
+        """Keep the events of the step just made; the first that ends the march does."""
+        ending = {event.label for event in self.model.events if event.ends}
+        self.events += records
+        for record in records:
+            if self.ended_by is None and record.label in ending:
+                self.ended_by = record.label
 
     def _pass_breaks(self, t: Any) -> bool:
         before = self.break_index
@@ -302,10 +355,16 @@ class Loop:
     def accept_proposal(self, t: Any) -> None:
         """Commit a step that a caller proposed; its events are recorded at its end."""
         happened = self.crossings.settle(t, self.step.new) if self.has_events else []
-        for i in happened:
-            event = self.crossings.events[i]
-            self.events.append(EventRecord(event.label, float(t), self.step.new.copy()))
-        self._commit(t, restart=bool(happened))
+        labels = [self.crossings.events[i].label for i in happened]
+        self.alias = None
+        records = [EventRecord(label, t, self.step.new.copy()) for label in labels]
+        self._commit(t, records, restart=bool(labels))
+        self.pace.restart(t)
+
+    def refuse_outside(self, t: Any) -> None:
+        """Say which entry of the last attempt, which ended at t, the model's `within` does not allow."""
+        if not self._inside(t, self.step.new):
+            raise CannotGoOn("within", outside(self.model, self.step.new, t), "  Take a smaller step.")
 
     def refuse_not_finite(self, h: Any) -> None:
         """Say where the last attempt stopped being finite."""
@@ -316,7 +375,7 @@ class Loop:
         self.time, self.ended_by = t, None
         self.break_index = 0
         self._pass_breaks(t)
-        self.replace_state(state)
+        self.replace_state(state, "state")
         self.step.floor = just_after(t, self.direction) if t in self.model.breaks else None
         self.pace.restart(t)
         if self.controller is not None:
@@ -325,9 +384,15 @@ class Loop:
     def settle(self) -> None:
         """Finish a commit that an interruption cut short, so that time and state belong together."""
         if self.pending is not None:
-            self.step.slab[0] = self.step.new_flat
-            self.time, self.accepted = self.pending
+            time, self.accepted, records = self.pending
+            self.step.load(self.step.new.copy())
+            self.time = time
+            if records and (not self.events or self.events[-1] is not records[-1]):
+                self._record(records)
             self.pending = None
+            if self._pass_breaks(time):
+                self.step.floor = just_after(time, self.direction)
+            self.pace.restart(time)
 
     def _after_stage(self, t: Any, y: Array) -> Any:
         assert self.model.after_stage is not None
@@ -343,11 +408,24 @@ class Loop:
                 "  Return an array of the state's shape, or None to leave it.",
                 argument="after_step",
             )
-        self.replace_state(array)
+        if array.dtype != object and not np.isfinite(array).all():
+            raise CannotGoOn(
+                "not finite",
+                f"after_step returned a state that is not finite at t = {float(self.time):g}",
+                f"  {where_defined(self.model.after_step)}",
+            )
+        self.replace_state(array, "after_step")
 
-    def replace_state(self, state: Array) -> None:
+    def replace_state(self, state: Array, source: str) -> None:
         """Put another state in the place of the present one; the rate there is evaluated anew."""
-        self.step.load(state.astype(self.step.dtype, casting="same_kind"))
+        dtype = self.step.dtype
+        if not np.can_cast(state.dtype, dtype, casting="same_kind"):
+            raise BadModel(
+                f"{source} has dtype {state.dtype}, and the model's state has dtype {dtype}\n"
+                f"  Give {dtype}, or a model with a state of dtype {state.dtype}.",
+                argument=source,
+            )
+        self.step.load(state.astype(dtype))
         self.crossings.arm(self.time, self.step.state)
 
     # Saving and restoring.
@@ -369,8 +447,10 @@ class Loop:
             floor=step.floor,
             params=copy_params(self.params)[0],
             counters=(self.accepted, self.rejected, step.calls),
-            events=len(self.events),
-            notes=len(self.notes),
+            events=tuple(self.events),
+            notes=tuple(self.notes),
+            ended_by=self.ended_by,
+            crowded=self.switches.here,
         )
 
     def restore(self, saved: Saved) -> None:
@@ -385,8 +465,8 @@ class Loop:
         self.pace.restore(saved.pace)
         self.crossings.signs = list(saved.signs)
         self.accepted, self.rejected, step.calls = saved.counters
-        self.ended_by = None
-        del self.events[saved.events :], self.notes[saved.notes :]
+        self.ended_by, self.switches.here = saved.ended_by, saved.crowded
+        self.events[:], self.notes[:] = saved.events, saved.notes
 
     def _take_params(self, params: Any) -> None:
         """Go on with other params; every function of the model gets them from now on."""

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import logging
+from bisect import bisect_left
 from collections.abc import Callable, Iterable, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from newel.catalogue.registry import default_registry
 from newel.errors import BadRequest, MarchFailed, MarchInterrupted, NewelError, OutputFailed
+from newel.marching.arithmetic import own_sums_are_quiet
 from newel.marching.failures import CannotGoOn, blame, kept
 from newel.marching.loop import Loop
 from newel.marching.methods import method_for
@@ -142,10 +144,11 @@ def _check_landings(loop: Loop, rule: StepRule, delivery: Delivery) -> None:
     if isinstance(pace, GridPace):
         nearest: Callable[[float], float] = pace.nearest
     elif isinstance(rule, Given):
-        times = (loop.model.start, *rule.times)
+        times = sorted((loop.model.start, *rule.times))
 
         def nearest(t: float) -> float:
-            return min(times, key=lambda given: abs(given - t))
+            index = bisect_left(times, t)
+            return min(times[max(index - 1, 0) : index + 1], key=lambda given: abs(given - t))
     else:
         return
     for t in delivery.landings():
@@ -169,6 +172,10 @@ class _Drive:
 
     def run(self, progress: bool) -> Run:
         """Go from start to stop; whatever happens, close every sink and keep what was computed."""
+        with own_sums_are_quiet():
+            return self._run(progress)
+
+    def _run(self, progress: bool) -> Run:
         loop, model = self.loop, self.loop.model
         self.delivery.open()
         try:
@@ -179,9 +186,7 @@ class _Drive:
                 with bar:
                     ended = self._go(bar.update)
         except KeyboardInterrupt:
-            run = self._rescue("interrupted")
-            message = f"stopped by Ctrl-C at t = {loop.time:g}\n{kept(loop.accepted, loop.time)}"
-            raise MarchInterrupted(message, run=run) from None
+            raise self._interrupted(self._rescue("interrupted")) from None
         except OutputFailed as error:
             error.run = self._rescue("failed")
             raise
@@ -227,6 +232,11 @@ class _Drive:
             return Ended("memory", loop.time)
         return Ended("stop", loop.time)
 
+    def _interrupted(self, run: Run) -> MarchInterrupted:
+        loop = self.loop
+        message = f"stopped by Ctrl-C at t = {float(loop.time):g}\n{kept(loop.accepted, loop.time)}"
+        return MarchInterrupted(message, run=run)
+
     def _failure(self, headline: str, advice: str, reason: str) -> MarchFailed:
         loop = self.loop
         run = self._rescue("failed")
@@ -256,23 +266,25 @@ class _Drive:
         except OutputFailed as error:
             error.run = self._made(ended)
             raise
-        run = self._made(ended)
-        log.info(
-            "%s: t = %r to %r, %s, %d steps, %d rejected, %d calls, ended by %s",
-            run.method,
-            self.loop.model.start,
-            run.last_time,
-            run.settings["steps"],
-            run.accepted,
-            run.rejected,
-            run.calls,
-            ended.reason,
-        )
-        return run
+        except KeyboardInterrupt:
+            # The sinks are closed all the same, and the march is over.
+            raise self._interrupted(self._made(ended)) from None
+        return self._made(ended)
 
     def _made(self, ended: Ended) -> Run:
         loop, model = self.loop, self.loop.model
         memory = next((sink for sink in self.outputs if isinstance(sink, Memory)), None)
+        log.info(
+            "%s: t = %r to %r, %s, %d steps, %d rejected, %d calls, ended by %s",
+            self.about["method"],
+            model.start,
+            loop.time,
+            self.about["settings"]["steps"],
+            loop.accepted,
+            loop.rejected,
+            loop.step.calls,
+            ended.label or ended.reason,
+        )
         return Run(
             method=self.about["method"],
             digest=self.about["digest"],

@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+import math
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from newel.catalogue.registry import default_registry
-from newel.errors import BadModel
+from newel.errors import BadModel, BadRequest
+from newel.marching.arithmetic import own_sums_are_quiet
+from newel.marching.pacing import exactly
 from newel.models.model import Model
 from newel.protocols import Array, Rate
 from newel.stepping.numpy_step import NumpyStep
@@ -54,13 +57,17 @@ def one_step(
         ('0.9048375', None)
     """
     tableau = (default_registry() if registry is None else registry).find(method)
+    if not 0.0 < abs(float(step)) < math.inf:
+        raise BadRequest(f"step={step!r}: must be finite and not zero, in time units", argument="step")
     model = Model(rate, start=t, stop=t + step, state=y, params=params)
     call = RateCall(model, params)
     pair = tableau.embedded_weights is not None
     engine = NumpyStep(tableau, call, model.state, estimate=pair, compensated=False)
     call.first(model.start, engine.state, engine.rows[1])
     engine.evaluate, engine.fresh = call.evaluate, True
-    engine.attempt(model.start, float(step))
+    exact = model.state.dtype == object
+    with own_sums_are_quiet():
+        engine.attempt(*(map(exactly, (t, step)) if exact else (model.start, float(step))))
     if not engine.new_is_finite():
         raise BadModel(f"the step from t = {t!r} of length {step!r} gave a state that is not finite")
     error = engine.error_and_scale(0.0, np.ones(1))[0] if pair else None

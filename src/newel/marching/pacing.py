@@ -4,15 +4,26 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Sequence
+from fractions import Fraction
 from typing import Any
 
 from newel.errors import BadRequest
 from newel.protocols import Array
+from newel.stepping.switching.spacing import spacing
 
-__all__ = ["FunctionPace", "GivenPace", "GridPace", "Pace"]
+__all__ = ["FunctionPace", "GivenPace", "GridPace", "Pace", "exactly"]
 
 # A step count is whole when (stop − start)/step is, to this many units of rounding.
 _WHOLE = 8.0
+# Shorter steps, in spacings of time, are lost in its rounding; times closer than that are one time.
+_FEWEST = 4.0
+# A step of the user's function that ends so near to stop, in parts of itself, ends there: no slivers.
+_NEAR_STOP = 1e-6
+
+
+def exactly(value: Any) -> Any:
+    """Return a time or a step for a march whose time is exact: Python's own numbers become fractions."""
+    return Fraction(value) if isinstance(value, (int, float)) else value
 
 
 class Pace:
@@ -59,6 +70,12 @@ class GridPace(Pace):
                     f"step={step!r} from {start!r} to {stop!r} makes more steps than can be counted",
                     argument="step",
                 )
+            least = _FEWEST * spacing(max(abs(start), abs(stop)))
+            if abs(step) < least:
+                raise BadRequest(
+                    f"step={step!r} from {start!r} to {stop!r} is too small to move t; at least {least!r}",
+                    argument="step",
+                )
             unit = math.ulp(max(abs(start), abs(stop)) / abs(step))
             nearest = round(ratio)
             whole = nearest >= 1 and abs(ratio - nearest) <= _WHOLE * unit
@@ -102,9 +119,11 @@ class GridPace(Pace):
 
     def restart(self, t: Any) -> None:
         """Stand on, or just beyond, the last grid point that is not ahead of t."""
-        self.index = max(math.floor((t - self.start) / self.signed), 0)
-        if self.time(self.index + 1) == t:
-            self.index += 1
+        self.index = max(round((t - self.start) / self.signed), 0)
+        ahead = (self.time(self.index) - t) * (1 if self.signed > 0 else -1)
+        near = _FEWEST * spacing(t) if isinstance(t, float) else 0
+        if self.index and ahead > near:
+            self.index -= 1
         self.at = self.time(self.index)
 
     def save(self) -> Any:
@@ -119,7 +138,7 @@ class GridPace(Pace):
 class GivenPace(Pace):
     """A step to each of the given times, which end at stop."""
 
-    def __init__(self, start: float, stop: float, times: Sequence[float]) -> None:
+    def __init__(self, start: Any, stop: Any, times: Sequence[Any]) -> None:
         listed = [t for i, t in enumerate(times) if not (i == 0 and t == start)]
         for number, t in enumerate(listed, start=1):
             if not (start < t <= stop or stop <= t < start):
@@ -165,8 +184,9 @@ class GivenPace(Pace):
 class FunctionPace(Pace):
     """Each step has the length that the user's function gives."""
 
-    def __init__(self, stop: float, step: Callable[..., Any], extra: tuple[Any, ...]) -> None:
+    def __init__(self, stop: Any, step: Callable[..., Any], extra: tuple[Any, ...]) -> None:
         self.stop, self.step, self.extra = stop, step, extra
+        self.exact = not isinstance(stop, float)
 
     def target(self, t: Any, y: Array) -> tuple[Any, Any]:
         """Ask the function; a step that would pass stop ends there."""
@@ -181,12 +201,18 @@ class FunctionPace(Pace):
                 argument="step",
             )
         forward = self.stop > t
-        ahead = t + number if forward else t - number
+        if self.exact:
+            exact = exactly(length)
+            ahead = t + exact if forward else t - exact
+            near: Any = 0
+        else:
+            ahead = t + number if forward else t - number
+            near = _NEAR_STOP * number
         if ahead == t:
             raise BadRequest(
                 f"the step function gave {length!r} at t = {t!r}, which is too small to move t",
                 argument="step",
             )
-        if (ahead >= self.stop) == forward or ahead == self.stop:
+        if (self.stop - ahead if forward else ahead - self.stop) <= near:
             ahead = self.stop
         return ahead, ahead - t

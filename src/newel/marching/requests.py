@@ -3,13 +3,12 @@
 from __future__ import annotations
 
 import math
-from fractions import Fraction
 from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 
 from newel.errors import BadRequest
-from newel.marching.pacing import FunctionPace, GivenPace, GridPace, Pace
+from newel.marching.pacing import FunctionPace, GivenPace, GridPace, Pace, exactly
 from newel.protocols import Array, Norm
 from newel.stepping.rules import Adaptive, Fixed, Given, StepRule
 
@@ -72,9 +71,8 @@ def tolerances(model: Model, rule: Adaptive) -> Limits:
     flat = tolerance.reshape(1) if tolerance.ndim == 0 else wide.reshape(-1).copy()
     if not (flat > 0).all():
         raise BadRequest(f"abs_tol={rule.abs_tol!r} is zero in a state of dtype {dtype}", argument="abs_tol")
-    return Limits(
-        rule.rel_tol, flat / rule.rel_tol, rule.norm, rule.smallest or 0.0, rule.largest or math.inf
-    )
+    smallest, largest = float(rule.smallest or 0.0), float(rule.largest or math.inf)
+    return Limits(rule.rel_tol, flat / rule.rel_tol, rule.norm, smallest, largest)
 
 
 def breaks_inside(model: Model) -> list[float]:
@@ -86,10 +84,11 @@ def breaks_inside(model: Model) -> list[float]:
 def pace_of(rule: StepRule, start: Any, stop: Any, extra: tuple[Any, ...]) -> Pace:
     """Return what proposes the steps of a rule without error control."""
     if isinstance(rule, Given):
-        return GivenPace(start, stop, rule.times)
+        times = rule.times if isinstance(start, float) else [exactly(t) for t in rule.times]
+        return GivenPace(start, stop, times)
     assert isinstance(rule, Fixed)
     if callable(rule.step):
         return FunctionPace(stop, rule.step, extra)
     if isinstance(start, float):
         return GridPace(start, stop, float(rule.step))
-    return GridPace(start, stop, Fraction(rule.step) if isinstance(rule.step, (int, float)) else rule.step)
+    return GridPace(start, stop, exactly(rule.step))

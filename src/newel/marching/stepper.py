@@ -11,9 +11,11 @@ import numpy as np
 
 from newel.catalogue.registry import default_registry
 from newel.errors import BadModel, BadRequest, MarchFailed, NewelError
+from newel.marching.arithmetic import own_sums_are_quiet
 from newel.marching.failures import CannotGoOn, blame
 from newel.marching.loop import Loop, Saved
 from newel.marching.methods import method_for
+from newel.marching.pacing import exactly
 from newel.models.model import Model
 from newel.protocols import Array
 from newel.results.run import EventRecord, Note, Run
@@ -178,11 +180,15 @@ class Stepper:
             MarchFailed: where the march cannot go on; the stepper stays at the last accepted step.
         """
         loop = self._loop
-        target = type(loop.stop)(t) if loop.exact_time else float(t)
+        target = exactly(t) if loop.exact_time else float(t)
         self._check_target(target)
         self._trial = None
-        while loop.time != target and loop.ended_by is None:
-            self._guarded(lambda: loop.advance(target))
+
+        def go() -> None:
+            while loop.time != target and loop.ended_by is None:
+                loop.advance(target)
+
+        self._guarded(go)
         return self.time
 
     def propose(self, step: float) -> Trial:
@@ -190,14 +196,14 @@ class Stepper:
 
         Raises:
             BadRequest: for a length that is not positive and finite, or that passes the model's stop.
-            MarchFailed: where the result is not finite.
+            MarchFailed: where the result is not finite, or outside the model's `within`.
         """
         loop = self._loop
         self._check_can_move()
         number = float(step)
         if not 0.0 < number < math.inf:
             raise BadRequest(f"step={step!r}: must be positive and finite, in time units", argument="step")
-        length = type(loop.stop)(step) if loop.exact_time else number
+        length = exactly(step) if loop.exact_time else number
         ahead = loop.time + (length if loop.direction > 0 else -length)
         if not loop.exact_time and abs(ahead - loop.stop) <= 4.0 * math.ulp(max(abs(ahead), abs(loop.time))):
             ahead = loop.stop
@@ -207,6 +213,8 @@ class Stepper:
         self._guarded(lambda: engine.attempt(loop.time, h, loop.ceiling(ahead)))
         if not engine.new_is_finite():
             self._guarded(lambda: loop.refuse_not_finite(h))
+        if loop.has_within:
+            self._guarded(lambda: loop.refuse_outside(ahead))
         error = norm = None
         if engine.has_estimate:
             error = engine.error_and_scale(0.0, np.ones(1))[0]
@@ -225,12 +233,13 @@ class Stepper:
             BadRequest: for a time outside the span. BadModel: for a state of another shape or not finite.
         """
         loop = self._loop
-        at = loop.time if time is None else time
         low, high = sorted((loop.model.start, loop.model.stop))
+        at = loop.time if time is None else time
         if not low <= at <= high:
             raise BadRequest(
                 f"time={time!r} is outside the model's span, {low!r} to {high!r}", argument="time"
             )
+        at = exactly(at) if loop.exact_time else float(at)
         array = loop.step.state if state is None else np.asarray(state)
         if array.shape != loop.step.shape:
             raise BadModel(
@@ -295,7 +304,8 @@ class Stepper:
         """Do it; a failure leaves the stepper at its last accepted step and says so."""
         loop = self._loop
         try:
-            action()
+            with own_sums_are_quiet():
+                action()
         except CannotGoOn as error:
             raise self._failure(f"{error.headline}\n{error.advice}".rstrip(), error.reason) from None
         except NewelError:
@@ -305,6 +315,8 @@ class Stepper:
             if words is None:
                 raise
             raise self._failure(words, "raised") from error
+        finally:
+            loop.settle()
 
     def _failure(self, message: str, reason: str) -> MarchFailed:
         loop = self._loop

@@ -27,37 +27,34 @@ class Switches:
     def __init__(self) -> None:
         self.here = 0
 
-    def look(self, loop: Loop, t: float, h: float) -> tuple[float, str]:
+    def look(self, loop: Loop, t: float, h: float) -> tuple[float, str, list[EventRecord]]:
         """Look for events in the step attempted to t; land on the first that cuts.
 
         Returns:
-            The time where the step ends now, and the label of the event there, or "".
+            The time where the step ends now, the label of the event there, or "", and the events up to there.
         """
         crossings, step = loop.crossings, loop.step
         which = crossings.crossed(t, step.new)
         if not which:
             crossings.settle(t, step.new)
-            return t, ""
+            return t, "", []
         cubic = self._cubic(loop, t, h)
 
         def land(time: float) -> Array:
-            step.attempt(loop.time, time - loop.time)
+            step.attempt(loop.time, time - loop.time, loop.ceiling(time))
             return step.new
 
         cutting = [i for i in which if crossings.events[i].cuts]
+        attempted = t
         if cutting:
             t = locate(crossings, cutting, loop.time, t, cubic, land)
-        self._observe(loop, t, h, cubic)
+        records = self._observed(loop, t, h, cubic)
         happened = [i for i in crossings.settle(t, step.new) if crossings.events[i].cuts]
-        for i in happened:
-            event = crossings.events[i]
-            loop.events.append(EventRecord(event.label, t, step.new.copy()))
-            if event.ends and loop.ended_by is None:
-                loop.ended_by = event.label
         labels = [crossings.events[i].label for i in happened]
+        records += [EventRecord(label, t, step.new.copy()) for label in labels]
         if labels:
-            self._guard(loop, t, labels[0])
-        return t, "; ".join(labels)
+            self._guard(loop, t, attempted, labels[0])
+        return t, "; ".join(labels), records
 
     def _cubic(self, loop: Loop, t: float, h: float) -> CubicHermite:
         step = loop.step
@@ -70,8 +67,8 @@ class Switches:
             step.calls += 1
         return CubicHermite(step.state, step.rows[1], step.new.copy(), end_rate, h)
 
-    def _observe(self, loop: Loop, t: float, h: float, cubic: CubicHermite) -> None:
-        """Record the events that cut no step, up to t, in the order in which they happen."""
+    def _observed(self, loop: Loop, t: float, h: float, cubic: CubicHermite) -> list[EventRecord]:
+        """Return the events that cut no step, up to t, in the order in which they happen."""
         start, crossings = loop.time, loop.crossings
 
         def at(time: float) -> Array:
@@ -82,11 +79,12 @@ class Switches:
 
         seen = [i for i in crossings.crossed(t, loop.step.new) if not crossings.events[i].cuts]
         found = [(locate(crossings, [i], start, t, part, at), i) for i in seen]
-        for time, i in sorted(found, key=lambda pair: pair[0] * loop.direction):
-            loop.events.append(EventRecord(crossings.events[i].label, time, at(time)))
+        in_order = sorted(found, key=lambda pair: pair[0] * loop.direction)
+        return [EventRecord(crossings.events[i].label, time, at(time)) for time, i in in_order]
 
-    def _guard(self, loop: Loop, t: float, label: str) -> None:
-        near = abs(t - loop.time) <= 64.0 * spacing(t)
+    def _guard(self, loop: Loop, t: float, attempted: float, label: str) -> None:
+        # An event is located to some spacings of the end of the step attempted, which may be far from t = 0.
+        near = abs(t - loop.time) <= 64.0 * max(spacing(t), spacing(attempted))
         self.here = self.here + 1 if near else 0
         if self.here >= _MOST_AT_ONE_PLACE:
             raise CannotGoOn(

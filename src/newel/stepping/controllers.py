@@ -32,6 +32,8 @@ __all__ = [
 
 # What is remembered of a tiny error, so that one lucky step does not throttle the next; common practice.
 _LEAST_REMEMBERED = 1e-4
+# A rejected step is shortened even where its error was above 1 by a rounding and nothing is kept for safety.
+_LARGEST_AFTER_REJECTION = 0.99
 
 
 def _three(values: Iterable[float]) -> tuple[float, ...]:
@@ -119,8 +121,7 @@ class FilterController:
         """
         if error > 1.0:
             factor = self.safety * error ** (-1.0 / order)
-            if factor < self.smallest:
-                factor = self.smallest
+            factor = min(max(factor, self.smallest), _LARGEST_AFTER_REJECTION)
             if memory:
                 return False, factor, (*memory[:4], 1.0)
             return False, factor, (0.0, 0.0, 0.0, 0.0, 1.0)

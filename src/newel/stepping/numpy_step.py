@@ -267,6 +267,12 @@ class NumpyStep:
                 "  Return an array of the state's shape, or None to leave it.",
                 argument="after_stage",
             )
+        if not np.can_cast(array.dtype, self.dtype, casting="same_kind"):
+            raise BadModel(
+                f"after_stage returned dtype {array.dtype}, and the state has dtype {self.dtype}\n"
+                f"  Return {self.dtype}, or give the model a state of dtype {array.dtype}.",
+                argument="after_stage",
+            )
         target[:] = array.reshape(-1)
 
     def error_norm(self, rel_tol: float, ratio: Array, norm: Norm | None) -> float:
@@ -276,6 +282,9 @@ class NumpyStep:
         weighted root mean square over all entries with scale abs_tol + rel_tol·max(|y_n|, |y_n+1|).
         """
         if norm is not None:
+            # The user's norm may pass over what is no number; a march may not.
+            if not self.new_is_finite():
+                return math.nan
             return float(norm(*self.error_and_scale(rel_tol, ratio * rel_tol)))
         if not self.sizes_known:
             _abs(self.slab[0], self.size_before)
@@ -305,6 +314,9 @@ class NumpyStep:
         """The same for complex numbers, and for what may overflow or be no number."""
         with np.errstate(all="ignore"):
             np.abs(new, self.size_after[cut])
+            if not np.isfinite(self.size_after[cut]).all():
+                # An infinite scale would make any error small.
+                return math.nan
             scale = np.maximum(self.size_before[cut], self.size_after[cut])
             scale += ratio if ratio.size == 1 else ratio[cut]
             quotient = np.abs(error).astype(np.result_type(scale, np.float64)) / scale

@@ -146,6 +146,8 @@ class Adaptive:
             raise BadRequest(
                 f"smallest={self.smallest!r} is above largest={self.largest!r}", argument="smallest"
             )
+        if self.first is not None and self.smallest is not None and self.first < self.smallest:
+            raise BadRequest(f"first={self.first!r} is below smallest={self.smallest!r}", argument="first")
 
     def settings(self) -> dict[str, Any]:
         """Return the rule as plain data."""

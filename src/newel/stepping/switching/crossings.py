@@ -6,6 +6,8 @@ import math
 from collections.abc import Callable, Sequence
 from typing import TYPE_CHECKING, Any
 
+import numpy as np
+
 from newel.errors import BadModel
 from newel.protocols import Array
 from newel.stepping.switching.spacing import spacing
@@ -21,7 +23,8 @@ _MOST_LANDINGS = 60
 class Crossings:
     """Watches the indicators of a model.
 
-    An indicator that is exactly zero at the start is not armed: its first sign is no crossing.
+    A crossing has happened where the indicator is zero or has its new sign. One that is exactly zero at the
+    start is not armed: its first sign is no crossing.
 
     Args:
         events: the model's state events, in order of declaration.
@@ -36,6 +39,8 @@ class Crossings:
         """Return an indicator's value, in its own unit; it must be a number."""
         event = self.events[index]
         value = event.indicator(t, y, *self.extra)
+        if isinstance(value, np.ndarray) and value.ndim:
+            value = value.tolist()
         try:
             number = float(value)
         except (TypeError, ValueError):
@@ -63,15 +68,15 @@ class Crossings:
             value = self.value(i, t, y)
             if self._is_crossing(i, sign, value):
                 happened.append(i)
-            self.signs[i] = _sign(value) or sign
+            # At zero the far side counts as reached, so that leaving it there is no second crossing.
+            self.signs[i] = _sign(value) or -sign
         return happened
 
     def _is_crossing(self, index: int, before: int, value: float) -> bool:
-        after = _sign(value)
-        if before == 0 or after == 0 or after == before:
+        if before == 0 or _sign(value) == before:
             return False
         crossing = self.events[index].crossing
-        return crossing == "both" or crossing == ("rising" if after > 0 else "falling")
+        return crossing == "both" or crossing == ("rising" if before < 0 else "falling")
 
 
 def _sign(value: float) -> int:
@@ -99,8 +104,8 @@ def locate(
         land: makes the step end at a time and returns the state there (the step's own buffer).
 
     Returns:
-        The time landed on: the event's indicator has its new sign there, and the crossing is, by its slope,
-        within 10 spacings of t before it.
+        The time landed on: the event's indicator is zero or has its new sign there, and the crossing is, by
+        its slope, within 10 spacings of t before it.
     """
     fractions = {i: _first_guess(crossings, i, t0, t1, interpolant) for i in which}
     first = min(which, key=lambda i: fractions[i][0])
@@ -124,9 +129,10 @@ def _first_guess(
         middle = 0.5 * (low + high)
         if step % 3 and at_high != at_low:
             # A secant step two times out of three, a bisection the third: fast, and never stuck.
-            middle = min(max(low - at_low * (high - low) / (at_high - at_low), low), high)
+            secant = low - at_low * (high - low) / (at_high - at_low)
+            middle = min(max(secant, low), high) if math.isfinite(secant) else middle
         at_middle = value(middle)
-        if _sign(at_middle) in (before, 0):
+        if _sign(at_middle) == before:
             low, at_low = middle, at_middle
         else:
             high, at_high = middle, at_middle
@@ -158,7 +164,9 @@ def _refine(
             break
         value = crossings.value(index, at, land(at))
         landed = at
-        if _sign(value) in (before, 0):
+        if value == 0.0:
+            return at
+        if _sign(value) == before:
             near = at
         else:
             far = at
