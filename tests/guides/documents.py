@@ -1,7 +1,7 @@
 """Fenced blocks of a Markdown document, run in order in a folder of their own.
 
-`sh` blocks are run by bash and stop at the first command that fails. `python` blocks share one namespace, as in
-one session. A block whose first line is a comment with a file name (`# plant.py`) is written to that file
+`sh` blocks are run by bash and stop at the first command that fails. `python` blocks share one namespace, as
+in one session. A block whose first line is a comment with a file name (`# plant.py`) is written to that file
 instead. A `text` block that follows holds what was printed; `…` in it stands for anything.
 """
 
@@ -27,7 +27,7 @@ FILE = re.compile(r"# (?P<name>[\w./-]+\.(?:py|toml|md))")
 FENCE = re.compile(r"^```(?P<language>\w*)\n(?P<text>.*?)^```$", re.MULTILINE | re.DOTALL)
 UNITS = re.compile(r"(\d+)(?= units in the last place)")
 
-# Runs the blocks that it is given as JSON, and gives back as JSON what each printed, up to the first that fails.
+# Runs the blocks that it is given as JSON, and returns as JSON what each printed, to the first that fails.
 DRIVER = """
 import contextlib, io, json, subprocess, sys, traceback
 namespace, printed = {"__name__": "__main__"}, []
@@ -55,7 +55,7 @@ json.dump(printed, sys.stdout)
 
 @attrs.frozen
 class Block:
-    """One fenced block: its language, its text, the line of its fence, and the file that it fills, or None."""
+    """One fenced block: its language, text, the line of its fence, and the file that it fills, or None."""
 
     language: str
     text: str
@@ -140,7 +140,7 @@ def _environment(folder: Path) -> dict[str, str]:
     pip = commands / "pip"
     pip.write_text(f'#!/bin/sh\nexec {shlex.quote(sys.executable)} -m pip "$@" {shlex.join(more)}\n')
     pip.chmod(0o755)
-    before = [str(Path(each).resolve()) for each in os.environ.get("PYTHONPATH", "").split(os.pathsep) if each]
+    before = [os.path.abspath(each) for each in os.environ.get("PYTHONPATH", "").split(os.pathsep) if each]
     kept = {key: value for key, value in os.environ.items() if not key.startswith(("NEWEL_", "PYTEST_"))}
     return {
         **kept,

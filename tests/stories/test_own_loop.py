@@ -26,7 +26,7 @@ def rate(t, y):
 
 
 def tank():
-    return newel.Model(rate, start=0.0, stop=STOP, state=[1.0, 0.0], labels=("level", "valve"), units=("m", "1"))
+    return newel.Model(rate, start=0.0, stop=STOP, state=[1.0, 0.0], labels=("level", "valve"))
 
 
 def stepper():

@@ -34,7 +34,8 @@ print(abs(run.last_time - same.last_time) < 1e-3)
 def site(tmp_path_factory):
     """A folder with the installed package and nothing else."""
     folder = tmp_path_factory.mktemp("colleague")
-    source = shutil.copytree(PACKAGE, folder / "source", ignore=shutil.ignore_patterns("__pycache__", "build"))
+    left_out = shutil.ignore_patterns("__pycache__", "build")
+    source = shutil.copytree(PACKAGE, folder / "source", ignore=left_out)
     isolation = ["--no-build-isolation"] if find_spec("setuptools") else []
     pip = [sys.executable, "-m", "pip", "install", "--quiet", "--no-deps", "--disable-pip-version-check"]
     subprocess.run([*pip, *isolation, "--target", str(folder / "site"), str(source)], check=True, timeout=300)
@@ -45,14 +46,15 @@ def site(tmp_path_factory):
 def session(site, tmp_path_factory):
     """The folder in which the program ran, and what it printed."""
     folder = tmp_path_factory.mktemp("work")
-    before = [str(Path(each).resolve()) for each in os.environ.get("PYTHONPATH", "").split(os.pathsep) if each]
+    before = [os.path.abspath(each) for each in os.environ.get("PYTHONPATH", "").split(os.pathsep) if each]
+    path = os.pathsep.join([str(site), *before])
     done = subprocess.run(
         [sys.executable, "-W", "error", "-c", PROGRAM],
         capture_output=True,
         text=True,
         cwd=folder,
         timeout=120,
-        env=os.environ | {"PYTHONPATH": os.pathsep.join([str(site), *before]), "NEWEL_CACHE": str(folder / "c")},
+        env=os.environ | {"PYTHONPATH": path, "NEWEL_CACHE": str(folder / "c")},
     )
     assert done.returncode == 0, done.stderr
     return folder, done.stdout.splitlines()

@@ -68,8 +68,7 @@ def test_one_line_gives_the_numbers_of_the_loop():
 def test_each_step_by_itself_gives_the_numbers_of_the_loop():
     times, states = old_loop()
     steps = [
-        newel.one_step(rate, t, y, STEP, "kutta-4")[0]
-        for t, y in zip(times[:-1], states[:-1], strict=True)
+        newel.one_step(rate, t, y, STEP, "kutta-4")[0] for t, y in zip(times[:-1], states[:-1], strict=True)
     ]
     assert units_apart(states[1:], np.array(steps)) <= 4.0
 

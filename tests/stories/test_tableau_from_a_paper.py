@@ -5,6 +5,7 @@ coefficients from memory, held against the tableau that newel ships under its ow
 """
 
 import math
+from itertools import pairwise
 
 import pytest
 
@@ -91,7 +92,7 @@ def test_from_the_page_to_the_first_march(typed, registry):
     for step in (0.2, 0.1, 0.05):
         run = newel.march(model, "typed-from-paper-5-4", step=step, registry=registry)
         errors.append(math.hypot(run.last_state[0] - math.cos(10.0), run.last_state[1] + math.sin(10.0)))
-    orders = [math.log2(coarse / fine) for coarse, fine in zip(errors, errors[1:], strict=False)]
+    orders = [math.log2(coarse / fine) for coarse, fine in pairwise(errors)]
     assert orders == pytest.approx([5.0, 5.0], abs=0.3)
 
 
