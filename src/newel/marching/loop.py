@@ -5,15 +5,13 @@
 
 from __future__ import annotations
 
-import logging
-import math
 from fractions import Fraction
 from typing import TYPE_CHECKING, Any
 
-import attrs
 import numpy as np
 
 from newel.errors import BadModel
+from newel.marching.adaptive import FEWEST_SPACINGS, adaptive_step
 from newel.marching.failures import CannotGoOn, not_finite, outside
 from newel.marching.first_step import first_step
 from newel.marching.pacing import Pace
@@ -32,36 +30,9 @@ if TYPE_CHECKING:
     from newel.methods.tableau import Tableau
     from newel.models.model import Model
 
-__all__ = ["Loop", "Saved"]
+__all__ = ["Loop"]
 
-log = logging.getLogger("newel")
-
-# Measured and common practice: a stage that is no number, or a state outside its limits, quarters the step.
-_QUARTER, _MOST_QUARTERINGS = 0.25, 10
-_STRETCH, _FEWEST_SPACINGS, _SAME_PLACE = 1.01, 4.0, 4.0
-
-
-@attrs.frozen(eq=False)
-class Saved:
-    """All that a loop needs to go on from here to the bit."""
-
-    time: Any
-    state: Array
-    rate: Array | None
-    carry: Array | None
-    next_step: float
-    last_step: Any
-    memory: ControllerMemory
-    pace: Any
-    signs: tuple[int, ...]
-    break_index: int
-    floor: Any
-    params: Any
-    counters: tuple[int, int, int]
-    events: tuple[EventRecord, ...]
-    notes: tuple[Note, ...]
-    ended_by: str | None
-    crowded: int
+_SAME_PLACE = 4.0
 
 
 class Loop:
@@ -121,7 +92,7 @@ class Loop:
         self.stop_breaks = not self.exact_time and self.stop in model.breaks
         self.reach = max(self.step.nodes)
         self.break_index = 0
-        self.wall: Any = self._break_ahead()
+        self.wall: Any = self.break_ahead()
         self.crossings = Crossings(model.events, self.extra)
         self.has_events, self.has_within = bool(model.events), model.within is not None
         self.pace = Pace() if self.adaptive else pace_of(rule, self.start, self.stop, self.extra)
@@ -131,7 +102,7 @@ class Loop:
     def prepare(self) -> None:
         """Make the first rate call, arm the events, and choose the first step."""
         step = self.step
-        if not self._inside(self.time, step.state):
+        if not self.inside(self.time, step.state):
             raise BadModel(outside(self.model, step.state, self.time) + ", at the start", argument="within")
         if self.time in self.model.breaks and not self.exact_time:
             step.floor = just_after(self.time, self.direction)
@@ -160,19 +131,19 @@ class Loop:
         span = abs(self.wall - self.time)
         abs_tol = ratio * rel_tol
         length = first_step(self.step, self.time, span, self.direction, self.order, rel_tol, abs_tol, norm)
-        least = _FEWEST_SPACINGS * spacing(self.time)
+        least = FEWEST_SPACINGS * spacing(self.time)
         return min(max(length, smallest, least), largest)
 
     # One accepted step.
 
-    def _break_ahead(self) -> Any:
+    def break_ahead(self) -> Any:
         """The next place that a step may not cross: a break, or stop."""
         return self.breaks[self.break_index] if self.break_index < len(self.breaks) else self.stop
 
     def advance(self, landing: float | None = None) -> str:
         """Make one accepted step, at most to `landing`; return the label of an event there, or ""."""
         if self.adaptive:
-            t, h = self._adaptive_step(landing)
+            t, h = adaptive_step(self, landing)
         else:
             t, h = self._paced_step(landing)
         label = ""
@@ -216,97 +187,14 @@ class Loop:
             self.refuse_outside(ahead)
         return ahead, h
 
-    def _adaptive_step(self, landing: float | None) -> tuple[float, float]:
-        controller, step, time = self.controller, self.step, self.time
-        assert controller is not None
-        assert self.limits is not None
-        rel_tol, ratio, norm, smallest, largest = self.limits
-        wall = self.wall
-        if landing is not None and (landing - wall) * self.direction < 0:
-            wall = landing
-        remaining = (wall - time) * self.direction
-        quarterings, rejected_here, error, h = 0, 0, math.nan, 0.0
-        while True:
-            wanted = length = self.next_step
-            lands = wanted * _STRETCH >= remaining
-            if lands:
-                length = remaining
-            elif 2.0 * wanted > remaining:
-                length = 0.5 * remaining
-            ahead = wall if lands else time + length * self.direction
-            if not lands and wanted < max(smallest, _FEWEST_SPACINGS * spacing(time)):
-                if quarterings:
-                    raise self._no_way(error, h, quarterings)
-                raise self._underflow(wanted, rejected_here)
-            h = ahead - time
-            step.attempt(time, h, self.ceiling(ahead) if lands or self.reach > 1 else None)
-            error = step.error_norm(rel_tol, ratio, norm)
-            if not error < math.inf or (self.has_within and not self._inside(ahead, step.new)):
-                quarterings += 1
-                self.rejected += 1
-                log.debug("rejected at t = %r: step %r, not finite or not within", time, length)
-                if quarterings == _MOST_QUARTERINGS:
-                    raise self._no_way(error, h, quarterings)
-                self.next_step = length * _QUARTER
-                continue
-            accepted, factor, memory = controller.decide(error, length, self.order, self.memory)
-            if not 0.0 < factor < (math.inf if accepted else 1.0):
-                raise self._bad_factor(accepted, factor)
-            if accepted:
-                break
-            self.memory = memory
-            self.rejected += 1
-            rejected_here += 1
-            log.debug("rejected at t = %r: step %r, error norm %r", time, length, error)
-            self.next_step = length * float(factor)
-        following = length * float(factor)
-        cut = length < wanted and not rejected_here and not quarterings
-        if not cut or error * (wanted / length) ** self.order > 1.0:
-            self.memory = memory
-        else:
-            # Cut to land, and its error allows for what was wanted: that stands, and the cut is forgotten.
-            following = max(following, wanted)
-        self.next_step = min(following, largest)
-        return ahead, h
-
-    def _bad_factor(self, accepted: bool, factor: Any) -> CannotGoOn:
-        assert self.controller is not None
-        verdict = "accepted" if accepted else "rejected"
-        return CannotGoOn(
-            "controller",
-            f"controller {self.controller.name!r} {verdict} the step at t = {self.time!r}, factor {factor!r}",
-            "  A factor is positive and finite, and below 1 where the step is rejected.",
-        )
-
-    def _inside(self, t: Any, state: Array) -> bool:
+    def inside(self, t: Any, state: Array) -> bool:
+        """Whether the model allows this state at t."""
         within = self.model.within
         if within is None:
             return True
         if callable(within):
             return bool(within(t, state, *self.extra))
         return bool(((state >= within[0]) & (state <= within[1])).all())
-
-    def _advice(self) -> str:
-        return f"  {where_defined(self.model.rate)}"
-
-    def _no_way(self, error: float, h: float, quarterings: int) -> CannotGoOn:
-        often = "once" if quarterings == 1 else f"{quarterings} times"
-        words = f"  The step was quartered {often}.  {where_defined(self.model.rate)}"
-        if error < math.inf:
-            return CannotGoOn("within", outside(self.model, self.step.new, self.time + h), words)
-        return CannotGoOn("not finite", not_finite(self.step, self.model, self.time, h), words)
-
-    def _underflow(self, length: float, rejected: int) -> CannotGoOn:
-        smallest = 0.0 if self.limits is None else self.limits.smallest
-        least = max(smallest, _FEWEST_SPACINGS * spacing(self.time))
-        bound = "smallest" if least == smallest else "four spacings of t"
-        return CannotGoOn(
-            "underflow",
-            f"the step at t = {self.time!r} would have to be {length:.3g}, below {bound} ({least:.3g}), "
-            f"after {rejected} rejections there",
-            "  A jump or kink of the rate that is no declared break, a singularity, or a tolerance below the "
-            "model's own noise does this.",
-        )
 
     def _commit(self, t: Any, records: list[EventRecord], restart: bool) -> None:
         """Make the attempted step the state; a Ctrl-C in here is finished by `settle`."""
@@ -349,7 +237,7 @@ class Loop:
             if (self.breaks[self.break_index] - t) * self.direction > 0:
                 break
             self.break_index += 1
-        self.wall = self._break_ahead()
+        self.wall = self.break_ahead()
         return self.break_index > before
 
     def accept_proposal(self, t: Any) -> None:
@@ -363,12 +251,13 @@ class Loop:
 
     def refuse_outside(self, t: Any) -> None:
         """Say which entry of the last attempt, which ended at t, the model's `within` does not allow."""
-        if not self._inside(t, self.step.new):
+        if not self.inside(t, self.step.new):
             raise CannotGoOn("within", outside(self.model, self.step.new, t), "  Take a smaller step.")
 
     def refuse_not_finite(self, h: Any) -> None:
         """Say where the last attempt stopped being finite."""
-        raise CannotGoOn("not finite", not_finite(self.step, self.model, self.time, h), self._advice())
+        where = f"  {where_defined(self.model.rate)}"
+        raise CannotGoOn("not finite", not_finite(self.step, self.model, self.time, h), where)
 
     def restart(self, t: Any, state: Array) -> None:
         """Go on from another time and state; nothing is remembered but counters and events."""
@@ -428,47 +317,7 @@ class Loop:
         self.step.load(state.astype(dtype))
         self.crossings.arm(self.time, self.step.state)
 
-    # Saving and restoring.
-
-    def save(self) -> Saved:
-        """Return all that is needed to go on from here to the bit."""
-        step = self.step
-        return Saved(
-            time=self.time,
-            state=step.slab[0].copy(),
-            rate=step.slab[1].copy() if step.fresh else None,
-            carry=step.carry.copy() if step.compensated else None,
-            next_step=self.next_step,
-            last_step=self.last_step,
-            memory=self.memory,
-            pace=self.pace.save(),
-            signs=tuple(self.crossings.signs),
-            break_index=self.break_index,
-            floor=step.floor,
-            params=copy_params(self.params)[0],
-            counters=(self.accepted, self.rejected, step.calls),
-            events=tuple(self.events),
-            notes=tuple(self.notes),
-            ended_by=self.ended_by,
-            crowded=self.switches.here,
-        )
-
-    def restore(self, saved: Saved) -> None:
-        """Go back to what `save` returned; counters and events go back with it."""
-        step = self.step
-        step.put(saved.state, saved.rate, saved.carry)
-        step.floor = saved.floor
-        self._take_params(copy_params(saved.params)[0])
-        self.time, self.next_step, self.last_step = saved.time, saved.next_step, saved.last_step
-        self.memory, self.break_index = saved.memory, saved.break_index
-        self.wall = self._break_ahead()
-        self.pace.restore(saved.pace)
-        self.crossings.signs = list(saved.signs)
-        self.accepted, self.rejected, step.calls = saved.counters
-        self.ended_by, self.switches.here = saved.ended_by, saved.crowded
-        self.events[:], self.notes[:] = saved.events, saved.notes
-
-    def _take_params(self, params: Any) -> None:
+    def take_params(self, params: Any) -> None:
         """Go on with other params; every function of the model gets them from now on."""
         if self.model.params is None:
             return

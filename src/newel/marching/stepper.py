@@ -13,9 +13,10 @@ from newel.catalogue.registry import default_registry
 from newel.errors import BadModel, BadRequest, MarchFailed, NewelError
 from newel.marching.arithmetic import own_sums_are_quiet
 from newel.marching.failures import CannotGoOn, blame
-from newel.marching.loop import Loop, Saved
+from newel.marching.loop import Loop
 from newel.marching.methods import method_for
 from newel.marching.pacing import exactly
+from newel.marching.saving import Saved, restore, save
 from newel.models.model import Model
 from newel.protocols import Array
 from newel.results.run import EventRecord, Note, Run
@@ -253,12 +254,16 @@ class Stepper:
 
     def save(self) -> Saved:
         """Return all that `restore` needs to go on from here to the bit."""
-        return self._loop.save()
+        return save(self._loop)
 
     def restore(self, saved: Saved) -> None:
-        """Go back to where `save` was called, counters and events included."""
+        """Go back to where `save` was called, counters and events included.
+
+        Raises:
+            BadRequest: for what is not a saved place of a march of this state.
+        """
+        restore(self._loop, saved)
         self._trial = None
-        self._loop.restore(saved)
 
     # The judgement of a trial.
 
