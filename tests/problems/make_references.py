@@ -30,7 +30,7 @@ TIMES = ("4", "8", "12", "16", "20")
 
 @dataclass(frozen=True)
 class Precision:
-    """How a reference is computed; solutions are compared relative to an entry, or to `smallest` if larger."""
+    """How a reference is computed; solutions are compared relative to an entry or to `smallest`."""
 
     working_digits: int
     tolerances: tuple[str, str]
