@@ -155,6 +155,19 @@ def test_a_taken_slug_is_an_error_at_once_and_leaves_the_first_in_force() -> Non
     assert stand.find("mine-2") == first
 
 
+def test_a_taken_slug_is_told_before_any_proof() -> None:
+    with pytest.raises(SlugTaken):
+        registry().register(two_stages("kutta-4", order=3))
+
+
+def test_a_slug_taken_while_the_proof_ran_is_not_taken_twice() -> None:
+    """Another thread may register in between; here the progress of the proof itself does."""
+    stand, rival = registry(), attrs.evolve(two_stages("mine-2"), weights=["1", "0"], order=1)
+    with pytest.raises(SlugTaken, match="mine-2"):
+        stand.register(two_stages("mine-2"), progress=lambda done, of: stand.register(rival) and None)
+    assert stand.find("mine-2").digest == rival.digest
+
+
 def test_the_same_numbers_under_the_same_slug_are_no_clash() -> None:
     stand = registry()
     first = stand.register(two_stages("mine-2"))
