@@ -1,9 +1,9 @@
 """`newel check`: is a tableau what it claims to be?"""
 
 import pytest
-from tests.console.driver import own, say
 
 import newel
+from tests.console.driver import own, say
 
 pytestmark = pytest.mark.core
 

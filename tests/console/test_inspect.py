@@ -3,10 +3,10 @@
 import re
 
 import pytest
-from tests.console.driver import own, say
 
 import newel
 from newel.console.triangle import as_text, polynomial
+from tests.console.driver import own, say
 
 pytestmark = pytest.mark.core
 
@@ -28,7 +28,7 @@ def test_the_classical_method_stands_in_the_usual_triangle():
 def test_a_well_known_pair_fits_into_80_columns_as_a_triangle():
     lines = as_text(newel.find("dormand-prince-5-4"), 80).splitlines()
     assert lines[4] == " 8/9 │ 19372/6561 -25360/2187 64448/6561 -212/729"
-    assert lines[9].split() == "│ 5179/57600 0 7571/16695 393/640 -92097/339200 187/2100 1/40".split()
+    assert lines[9] == "     │ 5179/57600           0 7571/16695  393/640 -92097/339200 187/2100 1/40"
 
 
 def test_a_wide_tableau_becomes_a_list_that_names_every_entry():
@@ -36,7 +36,9 @@ def test_a_wide_tableau_becomes_a_list_that_names_every_entry():
     text = as_text(tableau, 80)
     assert "  stage 12   c = 4/3\n" in text
     assert "     9: (-340864+242816*sqrt(6))/405  10: (26304-15176*sqrt(6))/45\n" in text
-    entries = sum(bool(x) for row in (*tableau.matrix, tableau.weights, tableau.embedded_weights) for x in row)
+    entries = sum(
+        bool(x) for row in (*tableau.matrix, tableau.weights, tableau.embedded_weights) for x in row
+    )
     assert len(re.findall(r"^ +\d+: |  +\d+: ", text, re.MULTILINE)) == entries
 
 

@@ -1,9 +1,9 @@
 """`newel list`: which methods there are, in a table that stays readable."""
 
 import pytest
-from tests.console.driver import own, process, say, uncolored
 
 import newel
+from tests.console.driver import own, process, say, uncolored
 
 pytestmark = pytest.mark.core
 
@@ -83,14 +83,22 @@ def test_sort_by_floor_never_goes_down():
 
 def test_nothing_found_is_said_and_is_no_error():
     said = say("list", "--order", "4", "--text", "xyzzy")
-    assert (said.status, said.out) == (0, f"0 methods of {len(newel.names())}.  In full: newel inspect SLUG\n")
+    assert (said.status, said.out) == (
+        0,
+        f"0 methods of {len(newel.names())}.  In full: newel inspect SLUG\n",
+    )
 
 
 def test_json_is_one_document_with_all_fields():
     data = say("list", "--order", "8", "--json").data
     assert data["schema"] == "newel-list/1"
     entry = next(each for each in data["methods"] if each["slug"] == "prince-dormand-8-7")
-    assert (entry["order"], entry["embedded_order"], entry["stages"], entry["outcome"]) == (8, 7, 13, "rounded")
+    assert (entry["order"], entry["embedded_order"], entry["stages"], entry["outcome"]) == (
+        8,
+        7,
+        13,
+        "rounded",
+    )
     assert data["families"] == ["doubled-{method}"]
 
 

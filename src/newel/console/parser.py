@@ -85,7 +85,7 @@ def build() -> tuple[Parser, dict[str, Parser]]:
 
     parser = Parser(
         "newel",
-        "Explicit Runge-Kutta methods as proven data, and one engine that marches models with them.",
+        "Explicit Runge-Kutta methods as proven data, and one engine to march with.",
         ("newel list", f"{_MARCH} --to lock.csv"),
     )
     parser.add_argument("--version", action="version", version=f"newel {__version__}")

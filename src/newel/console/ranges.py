@@ -42,6 +42,8 @@ def numbers(text: str, option: str) -> list[float]:
         if match is None:
             if ".." in part:
                 raise BadRequest(f"{option} {part[:60]}: no range\n  {_FORMS}", argument=option)
+            if not part.strip():
+                raise BadRequest(f"{option} {text[:60]}: a number is missing\n  {_FORMS}", argument=option)
             found.append(number(part, option))
         else:
             found += _between(match, option)

@@ -24,6 +24,28 @@ class NobodyReads(Exception):
     """Stdout is a pipe that its reader has closed: enough was seen."""
 
 
+class _Page(StringIO):
+    """What rich draws on in the place of a stream: it asks the stream what it is, and never writes to it."""
+
+    def __init__(self, stream: TextIO) -> None:
+        super().__init__()
+        self._stream = stream
+
+    @property
+    def encoding(self) -> str:  # type: ignore[override]  # StringIO has None here
+        return getattr(self._stream, "encoding", None) or "utf-8"
+
+    def isatty(self) -> bool:
+        return self._stream.isatty()
+
+    def take(self) -> str:
+        """Return what was drawn since the last time."""
+        text = self.getvalue()
+        self.seek(0)
+        self.truncate()
+        return text
+
+
 class Screen:
     """The two streams of a command.
 
@@ -38,6 +60,7 @@ class Screen:
     def __init__(self, out: TextIO, err: TextIO, **settings: Any) -> None:
         self.out, self.err = out, err
         self._settings = settings
+        self._page = _Page(out)
         self._console: Console | None = None
         self._said: set[str] = set()
 
@@ -56,20 +79,17 @@ class Screen:
         if self._console is None:
             from rich.console import Console
 
-            self._console = Console(
-                file=self.out, markup=False, highlight=False, emoji=False, **self._settings
-            )
+            usual = {"markup": False, "highlight": False, "emoji": False, "force_jupyter": False}
+            self._console = Console(file=self._page, **{**usual, **self._settings})
         return self._console
 
     def draw(self, *things: Any) -> None:
         """Draw rich renderables, or texts, as results; the lines of a text stay as they are."""
         from rich.text import Text
 
-        with self.console.capture() as capture:
-            for thing in things:
-                self.console.print(thing, soft_wrap=isinstance(thing, (str, Text)))
-        lines = capture.get().split("\n")
-        self._put("\n".join(line.rstrip() for line in lines))
+        for thing in things:
+            self.console.print(thing, soft_wrap=isinstance(thing, (str, Text)))
+        self._put("\n".join(line.rstrip() for line in self._page.take().split("\n")))
 
     def write(self, text: str) -> None:
         """Write a text as a result, as it is."""
