@@ -327,6 +327,14 @@ def test_families_in_families_end_at_two() -> None:
         registry().find("doubled-doubled-doubled-euler-1")
 
 
+def test_families_in_families_end_at_two_whatever_was_asked_for_before() -> None:
+    stand = registry()
+    for slug in ("doubled-euler-1", "doubled-doubled-euler-1"):
+        assert stand.find(slug).slug == slug
+    with pytest.raises(BadRequest, match="deep"):
+        stand.find("doubled-doubled-doubled-euler-1")
+
+
 def test_an_absurdly_long_slug_is_simply_unknown() -> None:
     with pytest.raises(UnknownMethod) as caught:
         registry().find("doubled-" * 5000 + "euler-1")

@@ -26,11 +26,13 @@ class Methods:
     def __init__(self, shelves: Shelves) -> None:
         self._shelves = shelves
         self._loaded: dict[str, Tableau] = {}
+        self._nested: dict[str, int] = {}
         self._trusted: set[str] = set()
 
     def load(self, slug: str, depth: int = 0) -> Tableau:
         """Return the method of a slug, a member of a family included; see `Registry.load`."""
-        if slug in self._loaded:
+        # What is remembered must not let a member in that stands too deep when it is asked for first.
+        if slug in self._loaded and depth + self._nested.get(slug, 0) <= _DEEPEST:
             return self._loaded[slug]
         offers = self._shelves.offers("tableau", slug)
         loaded = self._choose(offers, slug, ()) if offers else self._load_member(slug, depth)
@@ -51,6 +53,7 @@ class Methods:
                 )
             arguments = tuple(self.load(word, depth + 1) if isinstance(word, str) else word for word in words)
             made = self._choose(tuple(offers), slug, arguments)
+            self._nested[slug] = 1 + max((self._nested.get(base, 0) for base in bases), default=-1)
             if any(self.is_trusted(each) for each in arguments if not isinstance(each, int)):
                 self.trust(made)
             return made
