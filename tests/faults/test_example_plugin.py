@@ -4,10 +4,11 @@ import json
 import shutil
 import subprocess
 import sys
-from importlib.util import find_spec
 from pathlib import Path
 
 import pytest
+
+from tests.installing import pip_into
 
 EXAMPLE = Path(__file__).parents[1] / "example_plugin"
 
@@ -41,11 +42,10 @@ def site(tmp_path_factory: pytest.TempPathFactory) -> Path:
     source = shutil.copytree(
         EXAMPLE, folder / "source", ignore=shutil.ignore_patterns("__pycache__", "build")
     )
-    isolation = ["--no-build-isolation"] if find_spec("setuptools") else []
-    command = [sys.executable, "-m", "pip", "install", "--quiet", "--no-deps", "--disable-pip-version-check"]
     target = folder / "site"
+    pip, options = pip_into(target)
     done = subprocess.run(
-        [*command, *isolation, "--target", str(target), str(source)],
+        [*pip, "install", *options, str(source)],
         capture_output=True,
         text=True,
         timeout=120,

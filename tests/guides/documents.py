@@ -13,15 +13,29 @@ import re
 import shlex
 import subprocess
 import sys
-from importlib.util import find_spec
 from pathlib import Path
 
 import attrs
 
-__all__ = ["ROOT", "Block", "documents", "faults", "read_blocks"]
+from tests.installing import pip_into
+
+__all__ = [
+    "README",
+    "ROOT",
+    "RUN",
+    "Block",
+    "Outcome",
+    "agrees",
+    "documents",
+    "faults",
+    "read_blocks",
+    "runnable",
+]
 
 ROOT = Path(__file__).parents[2]
+README = ROOT / "README.md"
 GUIDES = ROOT / "src" / "newel" / "guide"
+INSTALLS = 2
 RUN = ("sh", "python")
 FILE = re.compile(r"# (?P<name>[\w./-]+\.(?:py|toml|md))")
 FENCE = re.compile(r"^```(?P<language>\w*)\n(?P<text>.*?)^```$", re.MULTILINE | re.DOTALL)
@@ -65,7 +79,7 @@ class Block:
 
 def documents() -> list[Path]:
     """The README and every guide."""
-    return [ROOT / "README.md", *sorted(GUIDES.glob("*.md"))]
+    return [README, *sorted(GUIDES.glob("*.md"))]
 
 
 def read_blocks(path: Path) -> list[Block]:
@@ -80,7 +94,35 @@ def read_blocks(path: Path) -> list[Block]:
     return blocks
 
 
-def faults(blocks: list[Block], folder: Path) -> list[str]:
+def runnable(path: Path) -> list[Block]:
+    """Return the blocks of a document without the two at the head of the README, which install newel."""
+    return read_blocks(path)[INSTALLS:] if path == README else read_blocks(path)
+
+
+@attrs.frozen
+class Outcome:
+    """What a block printed: the block, the `text` block that shows it (or None), the output, and an error."""
+
+    block: Block
+    shown: Block | None
+    output: str
+    error: str
+
+    @property
+    def agrees(self) -> bool:
+        """Whether nothing failed and the document shows what was printed."""
+        return not self.error and (self.shown is None or agrees(self.shown.text, self.output))
+
+    def __str__(self) -> str:
+        if self.error or self.shown is None:
+            return f"line {self.block.line}: {self.error}\n{self.output}"
+        return (
+            f"line {self.shown.line} shows\n{self.shown.text}"
+            f"but line {self.block.line} printed\n{self.output}"
+        )
+
+
+def faults(blocks: list[Block], folder: Path) -> list[Outcome]:
     """Run the blocks in a folder and return what differs from what the document shows."""
     for block in (each for each in blocks if each.file):
         place = folder / str(block.file)
@@ -95,18 +137,16 @@ def faults(blocks: list[Block], folder: Path) -> list[str]:
         text=True,
         cwd=folder,
         env=_environment(folder),
-        timeout=300,
+        timeout=600,
     )
-    if done.returncode != 0:
-        return [f"the session ended with {done.returncode}:\n{done.stderr}"]
-    wrong = [done.stderr] if done.stderr else []
+    if done.returncode != 0 or done.stderr:
+        raise RuntimeError(f"the session ended with {done.returncode}:\n{done.stderr}")
+    outcomes = []
     for (i, block), (output, error) in zip(running, json.loads(done.stdout), strict=False):
-        if error:
-            wrong.append(f"line {block.line}: {error}\n{output}")
-        shown = blocks[i + 1] if i + 1 < len(blocks) else None
-        if shown is not None and shown.language == "text" and not agrees(shown.text, output):
-            wrong.append(f"line {shown.line} shows\n{shown.text}but line {block.line} printed\n{output}")
-    return wrong
+        following = blocks[i + 1] if i + 1 < len(blocks) else None
+        shown = following if following is not None and following.language == "text" else None
+        outcomes.append(Outcome(block, shown, output, error))
+    return [outcome for outcome in outcomes if not outcome.agrees]
 
 
 def agrees(shown: str, printed: str) -> bool:
@@ -135,10 +175,9 @@ def _environment(folder: Path) -> dict[str, str]:
     """
     site, commands = folder / ".site", folder / ".commands"
     commands.mkdir()
-    more = ["--target", str(site), "--no-deps", "--disable-pip-version-check"]
-    more += ["--no-build-isolation"] if find_spec("setuptools") else []
+    command, options = pip_into(site)
     pip = commands / "pip"
-    pip.write_text(f'#!/bin/sh\nexec {shlex.quote(sys.executable)} -m pip "$@" {shlex.join(more)}\n')
+    pip.write_text(f'#!/bin/sh\nexec {shlex.join(command)} "$@" {shlex.join(options)}\n')
     pip.chmod(0o755)
     before = [os.path.abspath(each) for each in os.environ.get("PYTHONPATH", "").split(os.pathsep) if each]
     kept = {key: value for key, value in os.environ.items() if not key.startswith(("NEWEL_", "PYTEST_"))}

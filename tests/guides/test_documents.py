@@ -6,21 +6,23 @@ from pathlib import Path
 import pytest
 
 from newel.catalogue.registry import Registry
-from tests.guides.documents import ROOT, RUN, Block, agrees, documents, faults, read_blocks
-
-README = ROOT / "README.md"
-INSTALLS = 2
-
-
-def runnable(path: Path) -> list[Block]:
-    """The blocks of a document without the two at the head of the README, which install newel."""
-    return read_blocks(path)[INSTALLS:] if path == README else read_blocks(path)
+from tests.guides.documents import (
+    INSTALLS,
+    README,
+    ROOT,
+    RUN,
+    agrees,
+    documents,
+    faults,
+    read_blocks,
+    runnable,
+)
 
 
 @pytest.mark.parametrize("path", documents(), ids=lambda path: path.stem)
 def test_every_block_of_a_document_does_what_it_shows(path: Path, tmp_path: Path) -> None:
     wrong = faults(runnable(path), tmp_path)
-    assert not wrong, f"{path.name}: " + "\n".join(wrong)
+    assert not wrong, f"{path.name}\n" + "\n".join(map(str, wrong))
 
 
 @pytest.mark.parametrize("path", documents(), ids=lambda path: path.stem)

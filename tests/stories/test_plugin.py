@@ -4,10 +4,11 @@ import os
 import shutil
 import subprocess
 import sys
-from importlib.util import find_spec
 from pathlib import Path
 
 import pytest
+
+from tests.installing import pip_into
 
 PACKAGE = Path(__file__).parents[1] / "example_plugin"
 
@@ -36,9 +37,8 @@ def site(tmp_path_factory):
     folder = tmp_path_factory.mktemp("colleague")
     left_out = shutil.ignore_patterns("__pycache__", "build")
     source = shutil.copytree(PACKAGE, folder / "source", ignore=left_out)
-    isolation = ["--no-build-isolation"] if find_spec("setuptools") else []
-    pip = [sys.executable, "-m", "pip", "install", "--quiet", "--no-deps", "--disable-pip-version-check"]
-    subprocess.run([*pip, *isolation, "--target", str(folder / "site"), str(source)], check=True, timeout=300)
+    pip, options = pip_into(folder / "site")
+    subprocess.run([*pip, "install", *options, str(source)], check=True, timeout=300)
     return folder / "site"
 
 
