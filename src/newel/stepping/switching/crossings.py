@@ -173,6 +173,8 @@ def _refine(
         if last is not None and value != last[1] and at != last[0]:
             slope = (value - last[1]) / (at - last[0])
         last = (at, value)
+        if not math.isfinite(slope):
+            slope = 0.0
         reach = abs(value / slope) if slope else math.inf
         if (at == far and reach <= 0.8 * close) or abs(far - near) <= close:
             break
