@@ -124,8 +124,8 @@ def test_the_digits_of_a_rounded_method_cover_its_rounding_and_no_digit_is_given
 ) -> None:
     decimal = st.decimals("-3", "3", places=6).filter(lambda x: abs(x) > 1e-3).map(str)
     method = Tableau(
-        "rounded-2",
-        order=2,
+        "rounded-5",
+        order=5,
         matrix=[[], [data.draw(decimal).lstrip("-")], [data.draw(decimal), "1/3"]],
         weights=[data.draw(decimal), data.draw(decimal), "1/4"],
         digits=6,
@@ -134,12 +134,12 @@ def test_the_digits_of_a_rounded_method_cover_its_rounding_and_no_digit_is_given
     assert not pair.is_exact
     factors = {
         ("matrix", 1, 0): (method.half_units("matrix")[1][0], Fraction(1, 2)),
-        ("matrix", 4, 0): (method.half_units("weights")[1 - 1], Fraction(1, 2)),
+        ("matrix", 4, 0): (method.half_units("weights")[0], Fraction(1, 2)),
         ("matrix", 6, 0): (method.half_units("matrix")[1][0], Fraction(1)),
         ("embedded", 3, None): (method.half_units("weights")[0], Fraction(1, 2)),
-        ("weights", 0, None): (method.half_units("weights")[0], Fraction(1, 3)),
-        ("weights", 1, None): (method.half_units("weights")[1], Fraction(2, 3)),
-        ("weights", 6, None): (method.half_units("weights")[1], Fraction(1, 3)),
+        ("weights", 0, None): (method.half_units("weights")[0], Fraction(15, 31)),
+        ("weights", 1, None): (method.half_units("weights")[1], Fraction(16, 31)),
+        ("weights", 6, None): (method.half_units("weights")[1], Fraction(1, 31)),
         ("nodes", 4, None): (method.half_units("nodes")[1], Fraction(1, 2)),
     }
     for (array, i, j), (unit, factor) in factors.items():

@@ -103,6 +103,7 @@ def test_the_digest_is_over_the_numbers_alone() -> None:
         {"weights": ["2/9", "1/3", "4/9", "1/1000000"]},
         {"nodes": ["0", "1/2", "3/4", "999/1000"]},
         {"matrix": [[], ["1/2"], ["1/100", "3/4"], ["2/9", "1/3", "4/9"]]},
+        {"matrix": [[], ["1/2"], ["0", "3/4"], ["2/9", "4/9", "1/3"]]},
         {"embedded_weights": ["7/24", "1/4", "1/3", "0"]},
         {"embedded_weights": None, "embedded_order": None},
         {"continuous_weights": [["1"], ["0"], ["0"], ["0"]], "continuous_order": 1},
@@ -263,9 +264,9 @@ class TestDigits:
         t = small(
             matrix=[[], ["0.3333333333"], ["0.1", "0.2333333333"]],
             weights=["1/4", "1/2", "1/4"],
-            digits={"matrix": 10, "matrix[3][1]": 4},
+            digits={"matrix": 10, "matrix[3][1]": 4, "matrix[3][2]": 6},
         )
-        assert dict(t.digits or {}) == {"nodes": 10, "nodes[3]": 4, "matrix": 10, "matrix[3][1]": 4}
+        assert {k: v for k, v in (t.digits or {}).items() if "nodes" in k} == {"nodes": 10, "nodes[3]": 4}
         assert t.half_units("nodes") == (0, Fraction(5, 10**11), Fraction(5, 10**5))
 
     def test_the_mapping_is_immutable_ordered_and_equal_to_a_plain_one(self) -> None:

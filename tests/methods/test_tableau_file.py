@@ -365,6 +365,8 @@ def test_a_file_system_without_hard_links_serves_too(tmp_path: Path, monkeypatch
     file = tmp_path / "bogacki-shampine-3-2.toml"
     write_tableau(parse_tableau(GOOD), file)
     assert list(tmp_path.iterdir()) == [file]
+    with pytest.raises(OutputExists):
+        write_tableau(parse_tableau(GOOD), file)
 
 
 def test_a_failed_write_leaves_the_old_file_and_no_rest(
