@@ -123,6 +123,18 @@ def test_gradients_are_the_derivatives_of_the_residuals(
         assert found[which, i, j] == pytest.approx(derivative, abs=1e-10 * scale)
 
 
+def test_a_residual_that_is_a_pure_root_is_not_zero() -> None:
+    arithmetic = ScaledSurds([[Exact(0), Exact(0)], [Exact(0, 1, 5), Exact(0)]], 5)
+    weights = arithmetic.vector([Exact(Fraction(1, 2), 1, 5), Exact(Fraction(1, 2))])
+    residual = arithmetic.residual(weights, trees(1)[0], arithmetic.ones(), Fraction(1))
+    assert residual == Exact(0, 1, 5)
+
+
+def test_the_bound_of_a_vector_counts_its_negative_entries() -> None:
+    arithmetic = FixedPoint([[Exact(-3), Exact(0)], [Exact(1), Exact(0)]], 8)
+    assert arithmetic.apply(arithmetic.ones()).largest == 3 << 8
+
+
 def test_stage_vectors_in_float64_follow_the_trees() -> None:
     matrix = np.array([[0.25, -1.0], [0.5, 2.0]])
     c = matrix.sum(axis=1)

@@ -132,6 +132,13 @@ def test_float_breaks_ties_to_even() -> None:
     assert float(Exact(2**53 + 3)) == 2.0**53 + 4
 
 
+def test_float_of_a_surd_next_to_a_tie_goes_to_its_own_side() -> None:
+    tiny = Exact(0, Fraction(1, 10**60), 2)
+    assert float(2**53 + 1 + tiny) == 2.0**53 + 2
+    assert float(2**53 + 1 - tiny) == 2.0**53
+    assert float(2**53 + 3 - tiny) == 2.0**53 + 2
+
+
 def test_float_of_a_surd_agrees_with_the_square_root_of_the_standard_library() -> None:
     assert float(Exact.of("sqrt(2)")) == 2.0**0.5
     assert float(Exact.of("-sqrt(21)/14")) == pytest.approx(-(21**0.5) / 14, rel=1e-15)

@@ -322,6 +322,16 @@ class TestRounded:
         verdict = prove(kutta(digits=16))
         assert (verdict.outcome, verdict.digits) == ("exact", None)
 
+    def test_the_least_trusted_digits_are_reported(self) -> None:
+        t = Tableau(
+            "two",
+            order=2,
+            matrix=[[], ["0.5"]],
+            weights=["0.00", "1.00"],
+            digits={"weights": 16, "matrix": 13},
+        )
+        assert prove(t).digits == 13
+
     def test_rounded_embedded_weights_excuse_nothing_in_exact_weights(self) -> None:
         near = Fraction(1, 6) + Fraction(1, 10**14)
         t = kutta(
@@ -433,6 +443,14 @@ def test_a_stage_that_only_the_embedded_weights_use_is_determined() -> None:
     assert verdict.undetermined == ()
 
 
+def test_a_stage_of_small_weight_is_determined() -> None:
+    small = Fraction(1, 10**6)
+    b2 = Fraction(1, 2) - small / 2
+    t = Tableau("light", order=2, matrix=[[], [1], ["1/2", 0]], weights=[1 - b2 - small, b2, small])
+    verdict = prove(t)
+    assert (verdict.outcome, verdict.undetermined) == ("exact", ())
+
+
 def test_every_coefficient_of_the_classical_method_is_determined() -> None:
     assert prove(kutta()).undetermined == ()
 
@@ -491,6 +509,19 @@ class TestRemarks:
         assert prove(t).remarks == (
             "the weights are of order 2, but of order 4 on linear problems with constant coefficients",
         )
+
+    def test_one_order_more_on_linear_problems_is_remarked_too(self) -> None:
+        t = Tableau("chain", order=2, matrix=[[], ["1/3"], [0, "1/2"]], weights=[0, 0, 1])
+        assert prove(t).remarks == (
+            "the weights are of order 2, but of order 3 on linear problems with constant coefficients",
+        )
+
+    def test_blindness_is_seen_through_rounding(self) -> None:
+        rounded = ["0.1666666666666667", "0.6666666666666667", 0, "0.1666666666666667"]
+        t = kutta(embedded_weights=rounded, embedded_order=2, digits={"embedded": 16})
+        verdict = prove(t)
+        assert verdict.outcome == "rounded"
+        assert any("blind to pure quadrature" in remark for remark in verdict.remarks)
 
     def test_a_stage_outside_the_step_is_remarked(self) -> None:
         t = Tableau("out", order=2, matrix=[[], ["4/3"]], weights=["5/8", "3/8"])
