@@ -58,7 +58,9 @@ class Controller(Protocol):
         """Return the memory at the start of a march and after every restart (break, event, changed state)."""
         ...
 
-    def decide(self, error: float, step: float, order: int, memory: ControllerMemory) -> tuple[bool, float, ControllerMemory]:
+    def decide(
+        self, error: float, step: float, order: int, memory: ControllerMemory
+    ) -> tuple[bool, float, ControllerMemory]:
         """Judge one attempted step.
 
         Args:

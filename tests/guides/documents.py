@@ -20,6 +20,7 @@ import attrs
 from tests.installing import pip_into
 
 __all__ = [
+    "GUIDES",
     "README",
     "ROOT",
     "RUN",

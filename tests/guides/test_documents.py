@@ -7,6 +7,7 @@ import pytest
 
 from newel.catalogue.registry import Registry
 from tests.guides.documents import (
+    GUIDES,
     INSTALLS,
     README,
     ROOT,
@@ -80,3 +81,11 @@ def test_an_output_agrees_up_to_the_dots_and_the_count_of_last_places_alone() ->
     assert agrees("at most 8 units in the last place\n", "at most 70 units in the last place\n")
     assert not agrees("at most 8 units in the last place\n", "at most 81 units in the last place\n")
     assert not agrees("8 steps\n", "9 steps\n")
+
+
+@pytest.mark.parametrize("path", [README, GUIDES / "replace-your-loop.md"], ids=lambda path: path.stem)
+def test_twelve_lines_become_one_and_seven_compare_them(path: Path) -> None:
+    before, after, compare = [block.text for block in read_blocks(path) if block.language == "python"][:3]
+    loop = before[before.index("t, y, h = ") :].splitlines()
+    march = [line for line in after.splitlines() if line and not line.startswith("import ")]
+    assert (len(loop), len(march), len(compare.splitlines())) == (12, 1, 7)
