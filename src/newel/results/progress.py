@@ -59,7 +59,8 @@ class Progress:
         self._drawn = now
         done = (time - self._start) / (self._stop - self._start)
         unit = f" {self._unit}" if self._unit else ""
-        steps = f"{accepted:,} step{'' if accepted == 1 else 's'}" + (f", {rejected:,} rejected" if rejected else "")
+        steps = f"{accepted:,} step{'' if accepted == 1 else 's'}"
+        steps += f", {rejected:,} rejected" if rejected else ""
         text = f"t = {time:.6g}{unit}   {steps}   step {abs(step):.2g}{unit}"
         completed = min(max(float(done), 0.0), 1.0)
         self._bars.update(self._task, completed=completed, description=text, refresh=True)
