@@ -172,9 +172,10 @@ class Loop:
             landing = Fraction(landing)
         if landing is not None and (landing - wall) * self.direction < 0:
             wall = landing
-        if wall != ahead and not self.exact_time:
-            gap = (wall - ahead) * self.direction
-            same = abs(gap) <= _SAME_PLACE * max(spacing(wall), spacing(self.time))
+        if wall != ahead:
+            gap = (wall - ahead) * (1 if self.direction > 0 else -1)
+            near = 0 if self.exact_time else _SAME_PLACE * max(spacing(wall), spacing(self.time))
+            same = abs(gap) <= near
             if same and ahead != self.stop:
                 # A break that rounding sets beside a grid point is that grid point.
                 self.alias = wall, ahead
