@@ -63,4 +63,14 @@ def draw(screen: Screen, named: str, model: Model, found: Examination) -> None:
             f"{finding.subject}: {finding.text}", screen.console.width, f"  {finding.severity:<9} ", " " * 12
         )
         screen.draw(Text(lines, style=_STYLES[finding.severity]))
-    screen.draw("Nothing spoils a march." if found.ok else "This would spoil a march.")
+    screen.draw(_conclusion(found))
+
+
+def _conclusion(found: Examination) -> str:
+    """The last line: whether a march can go on, and whether a person should look first."""
+    if not found.ok:
+        return "This would spoil a march."
+    warnings = sum(finding.severity == "warning" for finding in found.findings)
+    if not warnings:
+        return "Nothing spoils a march."
+    return f"Nothing is wrong for certain; look at the {'warning' if warnings == 1 else 'warnings'} first."
