@@ -63,11 +63,12 @@ def one_step(
     call = RateCall(model, params)
     pair = tableau.embedded_weights is not None
     engine = NumpyStep(tableau, call, model.state, estimate=pair, compensated=False)
-    call.first(model.start, engine.state, engine.rows[1])
-    engine.evaluate, engine.fresh = call.evaluate, True
     exact = model.state.dtype == object
+    at, length = (exactly(t), exactly(step)) if exact else (model.start, float(step))
+    call.first(at, engine.state, engine.rows[1])
+    engine.evaluate, engine.fresh = call.evaluate, True
     with own_sums_are_quiet():
-        engine.attempt(*(map(exactly, (t, step)) if exact else (model.start, float(step))))
+        engine.attempt(at, length)
     if not engine.new_is_finite():
         raise BadModel(f"the step from t = {t!r} of length {step!r} gave a state that is not finite")
     error = engine.error_and_scale(0.0, np.ones(1))[0] if pair else None
