@@ -20,6 +20,8 @@ __all__ = ["CannotGoOn", "blame", "kept", "not_finite", "outside"]
 _HOME = str(Path(__file__).resolve().parent.parent)
 # The modules that call the user's functions.
 _CALLERS = ("rate_call.py", "numpy_step.py", "crossings.py", "pacing.py")
+# The module that raises in a user's function what NumPy was asked to raise there.
+_LISTENER = "arithmetic.py"
 
 
 class CannotGoOn(Exception):
@@ -79,7 +81,7 @@ def blame(error: BaseException, model: Model) -> str | None:
 
     None where no function of the user's was running: the error is newel's own, and shows itself as it is.
     """
-    frames = traceback.extract_tb(error.__traceback__)
+    frames = [f for f in traceback.extract_tb(error.__traceback__) if Path(f.filename).name != _LISTENER]
     ours = [i for i, frame in enumerate(frames) if frame.filename.startswith(_HOME)]
     deepest = ours[-1] if ours else -1
     below = frames[deepest + 1 :]

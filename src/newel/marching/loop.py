@@ -262,10 +262,11 @@ class Loop:
 
     def restart(self, t: Any, state: Array) -> None:
         """Go on from another time and state; nothing is remembered but counters and events."""
+        self._check_dtype(state, "state")
         self.time, self.ended_by = t, None
         self.break_index = 0
         self._pass_breaks(t)
-        self.replace_state(state, "state")
+        self.replace_state(state)
         self.step.floor = just_after(t, self.direction) if t in self.model.breaks else None
         self.pace.restart(t)
         if self.controller is not None:
@@ -298,16 +299,21 @@ class Loop:
                 "  Return an array of the state's shape, or None to leave it.",
                 argument="after_step",
             )
-        if array.dtype != object and not np.isfinite(array).all():
+        self._check_dtype(array, "after_step")
+        if not self.exact_time and not np.isfinite(array).all():
             raise CannotGoOn(
                 "not finite",
                 f"after_step returned a state that is not finite at t = {float(self.time):g}",
                 f"  {where_defined(self.model.after_step)}",
             )
-        self.replace_state(array, "after_step")
+        self.replace_state(array)
 
-    def replace_state(self, state: Array, source: str) -> None:
+    def replace_state(self, state: Array) -> None:
         """Put another state in the place of the present one; the rate there is evaluated anew."""
+        self.step.load(state.astype(self.step.dtype))
+        self.crossings.arm(self.time, self.step.state)
+
+    def _check_dtype(self, state: Array, source: str) -> None:
         dtype = self.step.dtype
         if not np.can_cast(state.dtype, dtype, casting="same_kind"):
             raise BadModel(
@@ -315,8 +321,6 @@ class Loop:
                 f"  Give {dtype}, or a model with a state of dtype {state.dtype}.",
                 argument=source,
             )
-        self.step.load(state.astype(dtype))
-        self.crossings.arm(self.time, self.step.state)
 
     def take_params(self, params: Any) -> None:
         """Go on with other params; every function of the model gets them from now on."""
