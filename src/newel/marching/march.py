@@ -251,7 +251,7 @@ class _Drive:
         ended = Ended(reason, loop.time)
         try:
             if self.delivery.last_time is not None and self.delivery.last_time != loop.time:
-                self.delivery.row(loop.time, loop.step.state, "", True)
+                self.delivery.complete(loop.time, loop.step.state)
         except (NewelError, MemoryFull) as error:
             loop.notes.append(Note(str(error)))
         try:

@@ -113,6 +113,21 @@ class Delivery:
         if error is not None and not (last and isinstance(error, MemoryFull)):
             raise error
 
+    def complete(self, t: float, y: Array) -> None:
+        """Take the last row of a march that was interrupted: no sink that has it gets it a second time.
+
+        Raises:
+            OutputFailed: when a sink failed; the others have the row.
+        """
+        actions = [partial(feed.take, t, y, "") for feed in self._every if not feed.holds(t)]
+        actions += [
+            partial(feed.offer, pick, t, y, "", True) for pick, feed in self._thinned if not feed.holds(t)
+        ]
+        self.last_time = t
+        error = _attempt(actions)
+        if error is not None:
+            raise error
+
     def flush(self) -> None:
         """Hand over what has been gathered. Raises OutputFailed, after every sink has had its turn."""
         error = _attempt(feed.flush for feed in self._all_feeds())

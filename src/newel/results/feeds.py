@@ -166,6 +166,14 @@ class Feed:
             self._rows[self._filled][...] = state
             self._pending = True
 
+    def holds(self, time: float) -> bool:
+        """Whether the last row that came in, taken or waiting, is that of this time."""
+        if self._pending and self._times[self._filled] == time:
+            return True
+        if self._filled:
+            return bool(self._times[self._filled - 1] == time)
+        return any(outlet.safe_time == float(time) for outlet in self.outlets)
+
     def finish(self) -> None:
         """Hand over what is left, the last row of the march included."""
         if self._pending:
