@@ -51,7 +51,7 @@ def adaptive_step(loop: Loop, landing: float | None) -> tuple[float, float]:
         elif 2.0 * wanted > remaining:
             length = 0.5 * remaining
         ahead = wall if lands else time + length * loop.direction
-        if not lands and wanted < max(smallest, FEWEST_SPACINGS * spacing(time)):
+        if not lands and (wanted < smallest or wanted < FEWEST_SPACINGS * spacing(time)):
             raise _no_way(loop, error, h, quarterings) if quarterings else _underflow(loop, rejected_here)
         h = ahead - time
         step.attempt(time, h, loop.ceiling(ahead) if lands or loop.reach > 1 else None)

@@ -220,7 +220,8 @@ class Stepper:
         if engine.has_estimate:
             error = engine.error_and_scale(0.0, np.ones(1))[0]
         if loop.limits is not None:
-            norm = engine.error_norm(loop.limits.rel_tol, loop.limits.ratio, loop.limits.norm)
+            with own_sums_are_quiet():
+                norm = engine.error_norm(loop.limits.rel_tol, loop.limits.ratio, loop.limits.norm)
         self._trial = Trial(self, ahead, engine.new.copy(), error, norm)
         return self._trial
 

@@ -157,16 +157,12 @@ class NumpyStep:
 
     def _error_views(self, size: int, length: int, dtype: np.dtype[Any]) -> None:
         real = np.zeros(0, dtype=dtype).real.dtype
-        quotient = np.zeros(length, dtype=np.float64 if real == np.dtype(np.float32) else real)
-        scale = np.zeros(length, dtype=real)
+        self.quotient = np.zeros(length, dtype=np.float64 if real == np.dtype(np.float32) else real)
+        self.scale, self.real_zeros = np.zeros(length, dtype=real), np.zeros(length, dtype=real)
+        # The stage's buffer is free once the stages are done: the error estimate goes there.
         self.error_dot, self.error_rates = self.work[self.stages + 1, 1:].dot, self.slab[1:]
         self.size_before, self.size_after = np.zeros(size, dtype=real), np.zeros(size, dtype=real)
-        self.tame = 0.0 if dtype.kind == "c" else float(np.finfo(real).max) ** 0.5
-        # The stage's buffer is free once the stages are done: the error estimate goes there.
-        self.error_parts = [
-            (self.stage[c], self.new_flat[c], scale[: c.stop - c.start], quotient[: c.stop - c.start], c)
-            for c in self.cuts
-        ]
+        self.one_piece = len(self.cuts) == 1 and dtype.kind != "c"
 
     def load(self, state: Array) -> None:
         """Start anew from this state, shape and dtype as at first; the rate at it is not known yet."""
@@ -291,36 +287,33 @@ class NumpyStep:
             self.sizes_known = True
         self.sizes_made = True
         self.error_dot(self.error_rates, self.stage)
-        total, tame, one = 0.0, self.tame, len(self.cuts) == 1
-        before, after, all_alike = self.size_before, self.size_after, ratio.size == 1
-        for error, new, scale, quotient, cut in self.error_parts:
-            # Sizes far from overflow cannot raise a floating-point warning; guarding costs more than asking.
-            if not (tame and error.dot(error) < tame and new.dot(new) < tame):
-                total += self._wild_square(error, new, ratio, cut)
-                continue
-            if one:
-                _abs(new, after)
-                _maximum(before, after, out=scale)
-                _add(scale, ratio, scale)
-            else:
-                _abs(new, after[cut])
-                _maximum(before[cut], after[cut], out=scale)
-                _add(scale, ratio if all_alike else ratio[cut], scale)
-            _divide(error, scale, quotient)
-            total += quotient.dot(quotient)
-        return math.sqrt(total / self.count) / rel_tol
+        if not self.one_piece:
+            return math.sqrt(self._square_in_pieces(ratio) / self.count) / rel_tol
+        after, scale, quotient = self.size_after, self.scale, self.quotient
+        _abs(self.new_flat, after)
+        _maximum(self.size_before, after, out=scale)
+        _add(scale, ratio, scale)
+        _divide(self.stage, scale, quotient)
+        if scale.dot(self.real_zeros) != 0.0:
+            # An infinite scale would make any error small.
+            return math.nan
+        return math.sqrt(quotient.dot(quotient) / self.count) / rel_tol
 
-    def _wild_square(self, error: Array, new: Array, ratio: Array, cut: slice) -> float:
-        """The same for complex numbers, and for what may overflow or be no number."""
-        with np.errstate(all="ignore"):
-            np.abs(new, self.size_after[cut])
-            if not np.isfinite(self.size_after[cut]).all():
-                # An infinite scale would make any error small.
+    def _square_in_pieces(self, ratio: Array) -> float:
+        """The sum of squares of error over scale, piece by piece, by moduli where they are complex."""
+        total, zeros, all_alike = 0.0, self.real_zeros, ratio.size == 1
+        for cut in self.cuts:
+            length = cut.stop - cut.start
+            error, scale, quotient = self.stage[cut], self.scale[:length], self.quotient[:length]
+            after = self.size_after[cut]
+            _abs(self.new_flat[cut], after)
+            _maximum(self.size_before[cut], after, out=scale)
+            _add(scale, ratio if all_alike else ratio[cut], scale)
+            if scale.dot(zeros[:length]) != 0.0:
                 return math.nan
-            scale = np.maximum(self.size_before[cut], self.size_after[cut])
-            scale += ratio if ratio.size == 1 else ratio[cut]
-            quotient = np.abs(error).astype(np.result_type(scale, np.float64)) / scale
-            return float(quotient.dot(quotient))
+            _divide(_abs(error) if error.dtype.kind == "c" else error, scale, quotient)
+            total += float(quotient.dot(quotient))
+        return total
 
     def error_and_scale(self, rel_tol: float, abs_tol: Array) -> tuple[Array, Array]:
         """Return the last attempt's error estimate and its scale, new arrays in the state's shape."""
