@@ -150,8 +150,15 @@ def tree_conditions(document: Document, slopes: bool) -> Iterator[Condition]:
                 continue
             for tree in rooted_trees(order):
                 found = {} if floats is None else _slopes(document, floats, formula, tree)
-                name = f"{formula.part} {tree}" + (f" theta^{formula.power}" if formula.power else "")
+                name = f"{formula.part} {bracket(tree)}" + (
+                    f" theta^{formula.power}" if formula.power else ""
+                )
                 yield Condition(name, exact.residual(formula, tree), found, True)
+
+
+def bracket(tree: NestedTree) -> str:
+    """The tree in bracket notation."""
+    return f"[{','.join(map(bracket, tree))}]" if tree else "τ"
 
 
 def judge(document: Document, trees_only: bool = False) -> Judgement:
@@ -176,7 +183,7 @@ def judge(document: Document, trees_only: bool = False) -> Judgement:
         closest = max(closest, residual / bound)
     claims = ", ".join(f"{part} to order {order}" for part, order in document.claims.items())
     held = f"within bounds, the closest at {closest:.2g} of its own" if rounded else "exactly"
-    return Judgement(True, f"{count} conditions ({claims}) hold {held}")
+    return Judgement(True, f"all {count} row sums, ends and tree conditions hold {held}: {claims}")
 
 
 def _floats(document: Document, array: str) -> Any:

@@ -23,7 +23,11 @@ THREE_DIGITS = Context(prec=3, rounding=ROUND_CEILING)
 
 @dataclass(frozen=True)
 class Mutant:
-    """A changed tableau; `units` is the least change that shows, in units of the last trusted digit."""
+    """A changed tableau.
+
+    `units` is the least change that shows, in units of the last trusted digit of the entries touched; 0 where
+    all of them are exact.
+    """
 
     move: Move
     texts: dict[Place, str]
@@ -92,13 +96,10 @@ class Workshop:
             return self._one_in_the_numerator((printed or places)[0]), 0.0
         direction = dict(move.direction)
         least = self.visibility.least(direction, trees_only=move.kind == COMPENSATED)
-        unit = 2 * float(max(self._half_unit(place) for place in places))
+        unit = 2 * float(max(self.document.half_units[place] for place in places))
         # Among exact entries the least is 0: whatever changes them shows.
         size = 2 * least or TINY if isfinite(least) else UNSEEN_UNITS * (unit or 1e-12)
         return Fraction(THREE_DIGITS.create_decimal(Decimal(size))), least / unit if unit else 0.0
-
-    def _half_unit(self, place: Place) -> Fraction:
-        return self.document.half_unit(place, self.document.texts[place], as_rounded=True)
 
     def _swapped(self, move: Move, place: Place) -> str | None:
         """The text with two neighbouring digits swapped: the change is the least that shows, or drawn."""
@@ -117,7 +118,7 @@ class Workshop:
 
 def _swaps(text: str) -> Iterator[str]:
     for place in range(len(text) - 1):
-        first, second = text[place : place + 2]
+        first, second = text[place], text[place + 1]
         if first.isdigit() and second.isdigit() and first != second:
             swapped = text[:place] + second + first + text[place + 2 :]
             try:
