@@ -371,3 +371,21 @@ def test_the_textbook_step_is_right_itself() -> None:
     h = Fraction(1, 5)
     new, _ = textbook_step(lambda t, y: y, [0, h / 2, h / 2, h], [Fraction(1)], h, matrix, weights)
     assert new[0] == 1 + h + h**2 / 2 + h**3 / 6 + h**4 / 24
+
+
+@pytest.mark.parametrize("sign", [1.0, -1.0])
+def test_a_later_stage_with_node_zero_keeps_off_the_break_behind_it_too(sign: float) -> None:
+    times: list[float] = []
+
+    def rate(t: float, y: Any) -> Any:
+        times.append(t)
+        return -y
+
+    twice = newel.Tableau(
+        slug="twice-1", name="Twice", order=1, matrix=[[], [0], [0, "1/2"]], weights=["1/3", "1/3", "1/3"]
+    )
+    model = newel.Model(rate, start=0.5, stop=0.5 + sign, state=[1.0])
+    engine = NumpyStep(twice, RateCall(model, None), model.state, estimate=False, compensated=False)
+    engine.floor = np.nextafter(0.5, 0.5 + sign)
+    engine.attempt(0.5, sign * 0.25)
+    assert times == [engine.floor, engine.floor, 0.5 + sign * 0.125]
