@@ -18,10 +18,11 @@ if TYPE_CHECKING:
 
     from newel.catalogue.registry import Registry
     from newel.methods.order_conditions import Verdict
+    from newel.methods.repairs import Repair
 
 __all__ = ["PASTE", "WHAT", "add", "draw", "draw_details", "run"]
 
-WHAT = "Prove what methods claim, and show each condition that fails."
+WHAT = "Prove what methods claim; show each condition that fails, and the nearest repair."
 PASTE = ("newel check kutta-4", "newel check --all")
 
 
@@ -46,6 +47,7 @@ def add(parser: ArgumentParser) -> None:
     parser.add_argument("methods", nargs="*", metavar="METHOD", help="a slug, or a file that ends in .toml")
     parser.add_argument("--all", action="store_true", help="every method that is known")
     parser.add_argument("--anew", action="store_true", help="prove even what was proved here before")
+    parser.add_argument("--write", action="store_true", help="write the nearest repair into the file")
 
 
 def run(options: Namespace, screen: Screen) -> int:
@@ -55,6 +57,8 @@ def run(options: Namespace, screen: Screen) -> int:
     if not (options.all or options.methods):
         raise BadRequest("no method\n  newel check FILE.toml, newel check SLUG, or newel check --all")
     registry = registry_of(options)
+    if options.write:
+        return _repair(registry, options, screen)
     checked = _check_all(registry, options, screen) if options.all else _check_each(registry, options, screen)
     if options.json:
         screen.document("newel-check/1", {"methods": [_data(each) for each in checked]})
@@ -64,6 +68,37 @@ def run(options: Namespace, screen: Screen) -> int:
         if each.error is not None:
             screen.notice(str(each.error))
     return max((each.status for each in checked), default=0)
+
+
+def _repair(registry: Registry, options: Namespace, screen: Screen) -> int:
+    """Write the one nearest repair into a file, and check it again."""
+    from newel.methods.repair_file import write_repair
+
+    if options.all or len(options.methods) != 1 or not options.methods[0].endswith(".toml"):
+        raise BadRequest("--write repairs one file\n  newel check FILE.toml --write", argument="write")
+    (text,) = options.methods
+    before = _check(text, registry, options.anew, None)
+    if before.error is not None:
+        raise before.error
+    if before.verdict is not None and not before.verdict:
+        repair = _the_nearest(text, before.verdict.repairs)
+        write_repair(text, repair)
+        screen.notice(f"{text}: {', '.join(map(str, repair.changes))}: written")
+    options.write = False
+    return run(options, screen)
+
+
+def _the_nearest(text: str, repairs: Sequence[Repair]) -> Repair:
+    if not repairs:
+        error = BadRequest(f"{text}: no repair was found; nothing was written\n  newel check {text}")
+        error.exit_status = 1
+        raise error
+    nearest = [each for each in repairs if each.distance == repairs[0].distance]
+    if len(nearest) > 1:
+        lines = [f"  {each.text}" for each in nearest]
+        listed = "\n".join([f"{text}: {len(nearest)} repairs are equally near; nothing was written", *lines])
+        raise BadRequest(f"{listed}\n  Look at the source, and change the file by hand.", argument="write")
+    return repairs[0]
 
 
 def _check_each(registry: Registry, options: Namespace, screen: Screen) -> list[_Checked]:
@@ -146,13 +181,17 @@ def _table(proved: Sequence[tuple[str, Verdict]]) -> Table:
 
 
 def draw_details(screen: Screen, verdict: Verdict) -> None:
-    """Draw each failing condition, and what a reader would trip over."""
+    """Draw each failing condition, what would repair it, and what a reader would trip over."""
     from rich.text import Text
 
     width = screen.console.width
     for failure in verdict.failures:
         bound = f" (at most {failure.bound:.1e} is allowed)" if failure.bound else ""
         screen.draw(Text(filled(f"{failure.message}{bound}", width, "  ! ", "    "), style="red"))
+    for repair in verdict.repairs:
+        screen.draw(Text(filled(repair.text, width, "  > ", "    "), style="green"))
+    for line in verdict.undecided:
+        screen.draw(filled(line, width, "  ? ", "    "))
     remarks = [*verdict.remarks]
     if verdict.undetermined:
         remarks.append(f"not determined by the claimed orders: {', '.join(verdict.undetermined)}")

@@ -9,6 +9,7 @@ from typing import Any, Literal
 import attrs
 
 from newel.errors import BadRequest
+from newel.methods.repairs import Repair
 
 __all__ = ["Failure", "Verdict"]
 
@@ -63,6 +64,9 @@ class Verdict:
         remarks: what a reader would trip over.
         undetermined: coefficients, such as `matrix[3][1]` (from 1), that no order condition of the claims
             sees, so that no proof can vouch for them.
+        repairs: where the proof fails and `newel.check` has looked for them, the smallest changes that make
+            every condition of the claims hold, the one nearest to the printed text first.
+        undecided: what that search says where it found none, or could not look.
 
     >>> verdict = Verdict(outcome="exact", order=4, working_floor=5e-17)
     >>> bool(verdict), Verdict.from_data(verdict.to_data()) == verdict
@@ -78,6 +82,8 @@ class Verdict:
     failures: tuple[Failure, ...] = ()
     remarks: tuple[str, ...] = ()
     undetermined: tuple[str, ...] = ()
+    repairs: tuple[Repair, ...] = ()
+    undecided: tuple[str, ...] = ()
 
     def __bool__(self) -> bool:
         return self.outcome != "fails"
@@ -88,14 +94,17 @@ class Verdict:
         digits = "" if self.digits is None else f", {self.digits} digits trusted"
         head = f"{self.outcome}: order {self.order}{pair}{dense}{digits}, float64 to {self.working_floor:.1e}"
         lines = [failure.message for failure in self.failures] + list(self.remarks)
+        lines += [repair.text for repair in self.repairs] + list(self.undecided)
         return "\n  ".join([head, *lines])
 
     def to_data(self) -> dict[str, Any]:
-        """Return dicts, lists, texts and numbers, for JSON or TOML; absent orders are left out."""
+        """Return dicts, lists, texts and numbers, for JSON or TOML; what there is not is left out."""
         data = {field.name: getattr(self, field.name) for field in attrs.fields(Verdict)}
         data["working_floor"] = _plain(self.working_floor)
         data["failures"] = [failure.to_data() for failure in self.failures]
         data["remarks"], data["undetermined"] = list(self.remarks), list(self.undetermined)
+        data["repairs"] = [repair.to_data() for repair in self.repairs] or None
+        data["undecided"] = list(self.undecided) or None
         return {key: value for key, value in data.items() if value is not None}
 
     @classmethod
@@ -112,6 +121,8 @@ class Verdict:
                 "failures": tuple(Failure.from_data(failure) for failure in data.get("failures", ())),
                 "remarks": tuple(map(str, data.get("remarks", ()))),
                 "undetermined": tuple(map(str, data.get("undetermined", ()))),
+                "repairs": tuple(Repair.from_data(repair) for repair in data.get("repairs", ())),
+                "undecided": tuple(map(str, data.get("undecided", ()))),
             }
         except (KeyError, TypeError, ValueError, AttributeError) as error:
             raise BadRequest(f"no stored verdict: {error!r}", argument="data") from None
