@@ -2,26 +2,19 @@
 
 from __future__ import annotations
 
-import os
-from typing import TYPE_CHECKING, SupportsFloat, SupportsIndex
-
 import numpy as np
 from numpy.typing import NDArray
 
 from newel.protocols import Array, Head
-from newel.results.sinks.block_file import BlockFile
 from newel.results.sinks.digits import cells, columns
-from newel.results.sinks.thinning import Times, thinning
-
-if TYPE_CHECKING:
-    from newel.results.run import Ended
+from newel.results.sinks.text_file import TextFile
 
 __all__ = ["Csv"]
 
 _LINE_END = "\r\n"
 
 
-class Csv:
+class Csv(TextFile):
     """Writes rows to a CSV file: UTF-8, lines and quotes as RFC 4180 has them (so lines end in CR LF).
 
     The first row is `t` and the labels. Numbers have the shortest digits that read back the same; NaN and
@@ -42,60 +35,20 @@ class Csv:
 
     endings = (".csv",)
 
-    def __init__(
-        self,
-        path: str | os.PathLike[str],
-        overwrite: bool = False,
-        *,
-        at: Times | None = None,
-        every_steps: SupportsIndex | None = None,
-        every_time: SupportsFloat | None = None,
-    ) -> None:
-        self.thinning = thinning(at, every_steps, every_time)
-        self._file = BlockFile(path, overwrite)
-        self._head = ""
-        self._has_events = False
+    def head_text(self, head: Head) -> str:
+        """Return `t` and the labels as a line."""
+        return ",".join(map(_quoted, columns(head))) + _LINE_END
 
-    def __str__(self) -> str:
-        return self.path
-
-    def __repr__(self) -> str:
-        return f"Csv({self.path!r}, overwrite={self._file.overwrite}, {self.thinning!r})"
-
-    @property
-    def path(self) -> str:
-        """The file, as it was given."""
-        return self._file.path
-
-    @property
-    def half_written(self) -> bool:
-        """Whether a write failed and left part of a block behind."""
-        return self._file.half_written
-
-    def open(self, head: Head) -> None:
-        """Make the file ready. Raises OutputExists or OSError; an old file stays till the first rows come."""
-        self._head = ",".join(map(_quoted, columns(head))) + _LINE_END
-        self._has_events = head.has_events
-        self._file.open()
-
-    def write(self, times: NDArray[np.float64], states: Array, events: tuple[str, ...]) -> None:
-        """Append n rows in one piece. Raises OSError; the file then ends with the rows before these."""
+    def rows_text(self, times: NDArray[np.float64], states: Array, events: tuple[str, ...]) -> str:
+        """Return n lines."""
         rows = cells(times, states)
         if states.dtype.hasobject:
             rows = [list(map(_quoted, row)) for row in rows]
         lines = list(map(",".join, rows))
-        if self._has_events:
+        if self.has_events:
             lines = [f"{line},{_quoted(event)}" for line, event in zip(lines, events, strict=True)]
         lines.append("")
-        self._file.write(("" if self._file.started else self._head) + _LINE_END.join(lines))
-
-    def close(self, ended: Ended) -> None:
-        """Close the file. Raises OSError."""
-        self._file.finish(self._head)
-
-    def discard(self) -> None:
-        """Close the file because another sink could not open, and remove it if it is new."""
-        self._file.discard()
+        return _LINE_END.join(lines)
 
 
 def _quoted(text: str) -> str:

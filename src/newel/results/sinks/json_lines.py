@@ -2,27 +2,22 @@
 
 from __future__ import annotations
 
-import os
 from collections.abc import Mapping
-from typing import TYPE_CHECKING, Any, SupportsFloat, SupportsIndex
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from newel.protocols import Array, Head
-from newel.results.sinks.block_file import BlockFile
 from newel.results.sinks.digits import cells, columns
-from newel.results.sinks.thinning import Times, thinning
-
-if TYPE_CHECKING:
-    from newel.results.run import Ended
+from newel.results.sinks.text_file import TextFile
 
 __all__ = ["JsonLines"]
 
 _NO_NUMBERS = frozenset(("nan", "inf", "-inf"))
 
 
-class JsonLines:
+class JsonLines(TextFile):
     """Writes rows to a file with one JSON value a line, in UTF-8.
 
     The first line is the head, an object with `schema` ("newel-rows/1"), `method`, `digest`, `columns`,
@@ -45,61 +40,20 @@ class JsonLines:
 
     endings = (".jsonl", ".ndjson")
 
-    def __init__(
-        self,
-        path: str | os.PathLike[str],
-        overwrite: bool = False,
-        *,
-        at: Times | None = None,
-        every_steps: SupportsIndex | None = None,
-        every_time: SupportsFloat | None = None,
-    ) -> None:
-        self.thinning = thinning(at, every_steps, every_time)
-        self._file = BlockFile(path, overwrite)
-        self._head = ""
-        self._has_events = False
+    def head_text(self, head: Head) -> str:
+        """Return the head as one line."""
+        return _dumped(_head(head)) + "\n"
 
-    def __str__(self) -> str:
-        return self.path
-
-    def __repr__(self) -> str:
-        return f"JsonLines({self.path!r}, overwrite={self._file.overwrite}, {self.thinning!r})"
-
-    @property
-    def path(self) -> str:
-        """The file, as it was given."""
-        return self._file.path
-
-    @property
-    def half_written(self) -> bool:
-        """Whether a write failed and left part of a block behind."""
-        return self._file.half_written
-
-    def open(self, head: Head) -> None:
-        """Make the file ready. Raises OutputExists or OSError; an old file stays till the first rows come."""
-        self._head = _dumped(_head(head)) + "\n"
-        self._has_events = head.has_events
-        self._file.open()
-
-    def write(self, times: NDArray[np.float64], states: Array, events: tuple[str, ...]) -> None:
-        """Append n rows in one piece. Raises OSError; the file then ends with the rows before these."""
+    def rows_text(self, times: NDArray[np.float64], states: Array, events: tuple[str, ...]) -> str:
+        """Return n lines, an array each."""
         rows = cells(times, states)
         if states.dtype.hasobject:
             rows = [list(map(_dumped, row)) for row in rows]
         elif not (np.isfinite(times).all() and np.isfinite(states).all()):
             rows = [[f'"{cell}"' if cell in _NO_NUMBERS else cell for cell in row] for row in rows]
-        if self._has_events:
+        if self.has_events:
             rows = [[*row, _dumped(event)] for row, event in zip(rows, events, strict=True)]
-        text = "".join([f"[{','.join(row)}]\n" for row in rows])
-        self._file.write(text if self._file.started else self._head + text)
-
-    def close(self, ended: Ended) -> None:
-        """Close the file. Raises OSError."""
-        self._file.finish(self._head)
-
-    def discard(self) -> None:
-        """Close the file because another sink could not open, and remove it if it is new."""
-        self._file.discard()
+        return "".join([f"[{','.join(row)}]\n" for row in rows])
 
 
 def _head(head: Head) -> dict[str, Any]:
