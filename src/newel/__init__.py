@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from newel.catalogue.checking import check as check
     from newel.catalogue.inspection import inspect as inspect
     from newel.catalogue.registry import Registry as Registry
+    from newel.catalogue.taking_away import export as export
     from newel.errors import MarchFailed as MarchFailed
     from newel.errors import MarchInterrupted as MarchInterrupted
     from newel.errors import NewelError as NewelError
@@ -27,6 +28,7 @@ if TYPE_CHECKING:
     from newel.marching.march import march as march
     from newel.marching.one_step import one_step as one_step
     from newel.marching.stepper import Stepper as Stepper
+    from newel.methods.tableau import Notes as Notes
     from newel.methods.tableau import Tableau as Tableau
     from newel.methods.tableau_file import write_tableau as write_tableau
     from newel.models.events import StateEvent as StateEvent
@@ -34,6 +36,7 @@ if TYPE_CHECKING:
     from newel.models.layout import Layout as Layout
     from newel.models.loading import load_model as load_model
     from newel.models.model import Model as Model
+    from newel.results import pictures as pictures
     from newel.results import sinks as sinks
     from newel.results.run import Run as Run
     from newel.stepping import controllers as controllers
@@ -53,6 +56,7 @@ _WHERE = {
     "Model": "newel.models.model",
     "NewelError": "newel.errors",
     "NewelWarning": "newel.errors",
+    "Notes": "newel.methods.tableau",
     "Registry": "newel.catalogue.registry",
     "Run": "newel.results.run",
     "StateEvent": "newel.models.events",
@@ -60,6 +64,7 @@ _WHERE = {
     "Tableau": "newel.methods.tableau",
     "check": "newel.catalogue.checking",
     "examine": "newel.models.examine",
+    "export": "newel.catalogue.taking_away",
     "find": "newel.catalogue.access",
     "guide": "newel.guide",
     "inspect": "newel.catalogue.inspection",
@@ -75,6 +80,7 @@ _WHERE = {
 _MODULES = {
     "controllers": "newel.stepping.controllers",
     "errors": "newel.errors",
+    "pictures": "newel.results.pictures",
     "sinks": "newel.results.sinks",
     "testing": "newel.testing",
 }
