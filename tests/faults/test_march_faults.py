@@ -442,3 +442,34 @@ def test_a_ctrl_c_while_rows_are_written_loses_and_repeats_none(block: int, afte
     assert struck.times == other.times == run.times.tolist() == sorted(set(struck.times))
     assert run.last_time == struck.times[-1]
     assert len(struck.ended) == len(other.ended) == 1
+
+
+@pytest.mark.parametrize("how", RULES)
+@pytest.mark.parametrize("done", [False, True])
+def test_a_ctrl_c_within_the_change_of_state_leaves_time_state_and_events_together(
+    how: str, done: bool, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Named point: before, and after, the engine takes the new state of the step that ends on the event."""
+    from newel.stepping.numpy_step import NumpyStep
+
+    plain = NumpyStep.accept
+
+    def struck(self: NumpyStep) -> None:
+        strikes = bool(self.new[0] <= 0.5)
+        if done or not strikes:
+            plain(self)
+        if strikes:
+            raise KeyboardInterrupt
+
+    monkeypatch.setattr(NumpyStep, "accept", struck)
+    method, rule = RULES[how]
+    event = newel.StateEvent("half", lambda t, y: y[0] - 0.5)
+    sink = RecordingSink()
+    with pytest.raises(newel.MarchInterrupted) as caught:
+        newel.march(good(events=[event]), method, **rule, sinks=[sink, newel.sinks.Memory()])
+    run = caught.value.run
+    assert sink.times == run.times.tolist() == sorted(set(sink.times))
+    assert run.last_time == sink.times[-1] == run.events[-1].time == pytest.approx(math.log(2.0), abs=1e-5)
+    assert run.last_state.tolist() == sink.states[-1].tolist() == run.events[-1].state.tolist()
+    assert run.accepted == len(sink.times) - 1
+    assert len(run.events) == 1

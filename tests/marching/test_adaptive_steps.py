@@ -258,6 +258,17 @@ def test_units_of_time_and_state_change_no_bit_where_they_are_powers_of_two(
     assert other.rejected == one.rejected
 
 
+@pytest.mark.parametrize("method", PAIRS)
+@pytest.mark.parametrize("scale", [2.0**-30, 2.0**30])
+def test_the_first_step_has_no_scale_of_its_own_where_state_and_rate_are_zero(
+    method: str, scale: float
+) -> None:
+    one = march(lambda t, y: [t * math.cos(t)], 8.0, [0.0], method=method)
+    other = march(lambda t, y: [t / scale * math.cos(t / scale) / scale], 8.0 * scale, [0.0], method=method)
+    assert (other.times == one.times * scale).all()
+    assert (other.states == one.states).all()
+
+
 def test_a_shift_of_time_leaves_the_steps_equal_to_rounding() -> None:
     def rate(t: float, y: Any) -> Any:
         return np.array([y[1], -y[0]])

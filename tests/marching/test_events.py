@@ -209,6 +209,11 @@ def test_observed_and_cutting_events_of_one_step_are_recorded_in_order_of_time()
         model(later, cut, seen, rate=lambda t, y: [1.0], state=[0.0], stop=1.0), "kutta-4", step=1.0
     )
     assert [event.label for event in run.events] == ["seen", "cut"]
+    both = model(later, seen, rate=lambda t, y: [1.0], state=[0.0], stop=1.0)
+    run = newel.march(both, "kutta-4", step=1.0)
+    assert [event.label for event in run.events] == ["seen", "later"]
+    back = both.replace(rate=lambda t, y: [-1.0], stop=-1.0)
+    assert [event.label for event in newel.march(back, "kutta-4", step=1.0).events] == ["seen", "later"]
 
 
 def test_a_rate_that_branches_on_the_state_is_switched_at_the_event() -> None:

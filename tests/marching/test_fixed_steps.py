@@ -21,6 +21,10 @@ def growth(t: float, y: Any) -> Any:
     return y * math.cos(t)
 
 
+def still(t: float, y: Any) -> Any:
+    return 0.0 * y
+
+
 def march(rate: Any = growth, start: float = 0.0, stop: float = 1.0, **how: Any) -> newel.Run:
     state = how.pop("state", [1.0])
     return newel.march(newel.Model(rate, start=start, stop=stop, state=state), "kutta-4", **how)
@@ -147,6 +151,10 @@ def test_a_running_sum_of_equal_steps_leaves_no_sliver() -> None:
     run = march(step=lambda t, y: 0.1)
     assert run.accepted == 10
     assert run.last_time == 1.0
+    # A thousand of them are 99.9999999999986.
+    run = march(still, stop=100.0, step=lambda t, y: 0.1)
+    assert run.accepted == 1000
+    assert run.last_time == 100.0
 
 
 def test_a_step_function_gets_the_params() -> None:

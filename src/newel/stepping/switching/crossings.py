@@ -164,8 +164,6 @@ def _refine(
             break
         value = crossings.value(index, at, land(at))
         landed = at
-        if value == 0.0:
-            return at
         if _sign(value) == before:
             near = at
         else:
