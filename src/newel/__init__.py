@@ -17,7 +17,9 @@ if TYPE_CHECKING:
     from newel.catalogue.access import read_tableau as read_tableau
     from newel.catalogue.access import register as register
     from newel.catalogue.checking import check as check
+    from newel.catalogue.identify import identify as identify
     from newel.catalogue.inspection import inspect as inspect
+    from newel.catalogue.recognition import recover as recover
     from newel.catalogue.registry import Registry as Registry
     from newel.catalogue.taking_away import export as export
     from newel.errors import MarchFailed as MarchFailed
@@ -67,6 +69,7 @@ _WHERE = {
     "export": "newel.catalogue.taking_away",
     "find": "newel.catalogue.access",
     "guide": "newel.guide",
+    "identify": "newel.catalogue.identify",
     "inspect": "newel.catalogue.inspection",
     "load_model": "newel.models.loading",
     "march": "newel.marching.march",
@@ -74,6 +77,7 @@ _WHERE = {
     "one_step": "newel.marching.one_step",
     "plugins": "newel.catalogue.access",
     "read_tableau": "newel.catalogue.access",
+    "recover": "newel.catalogue.recognition",
     "register": "newel.catalogue.access",
     "write_tableau": "newel.methods.tableau_file",
 }

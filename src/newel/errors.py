@@ -23,6 +23,7 @@ __all__ = [
     "NewelWarning",
     "NotKept",
     "NotProved",
+    "NotRecovered",
     "OutputExists",
     "OutputFailed",
     "PluginWarning",
@@ -76,6 +77,19 @@ class NotProved(NewelError, ValueError):
 
     def __init__(self, message: str, *, slug: str, verdict: Any) -> None:
         self.slug, self.verdict = slug, verdict
+        super().__init__(message)
+
+
+class NotRecovered(NewelError, ValueError):
+    """A step function is no explicit Runge–Kutta step, or cannot be read.
+
+    Attribute: `reason`, such as "memory", "branch", "overwritten", "raises" or "never calls".
+    """
+
+    exit_status = 1
+
+    def __init__(self, message: str, *, reason: str) -> None:
+        self.reason = reason
         super().__init__(message)
 
 

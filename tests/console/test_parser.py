@@ -18,7 +18,7 @@ FUNCTIONS = {"list": "names"}
 
 
 def test_each_subcommand_calls_one_public_function():
-    assert SUBCOMMANDS == ("list", "inspect", "check", "march", "examine", "plugins", "guide")
+    assert SUBCOMMANDS == ("list", "inspect", "check", "recover", "identify", "march", "examine", "plugins", "guide")
     assert set(build()[1]) == set(SUBCOMMANDS)
     for name in SUBCOMMANDS:
         function = FUNCTIONS.get(name, name)
@@ -55,6 +55,8 @@ def test_every_subcommand_has_a_json_twin_with_a_schema(name, tmp_path):
     words = {
         "inspect": ["kutta-4"],
         "check": ["kutta-4"],
+        "recover": ["newel.examples:midpoint_step"],
+        "identify": ["kutta-4"],
         "march": ["decay.py", "--method", "kutta-4", "--step", "0.5"],
         "examine": ["decay.py"],
     }

@@ -22,7 +22,7 @@ if TYPE_CHECKING:
 
 __all__ = ["PASTE", "WHAT", "add", "draw", "draw_details", "run"]
 
-WHAT = "Prove what methods claim; show each condition that fails, and the nearest repair."
+WHAT = "Prove what methods claim; show what fails, and the nearest repair."
 PASTE = ("newel check kutta-4", "newel check --all")
 
 

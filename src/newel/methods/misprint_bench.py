@@ -12,7 +12,7 @@ import attrs
 from newel.errors import BadNumber, BadTableau
 from newel.methods.coefficients import Coefficients
 from newel.methods.conditions import LIMIT
-from newel.methods.digits import Digits, decimal_exponent, half_unit
+from newel.methods.digits import Digits, decimal_exponent
 from newel.methods.exact import Exact
 from newel.methods.order_conditions import prove
 from newel.methods.repairs import Change, Repair
@@ -210,12 +210,6 @@ def stated(tableau: Tableau, place: Place) -> int | None:
         found = digits.get(str(place), digits.get(place.array))
         return found if isinstance(found, int) else None
     return digits
-
-
-def rounding(tableau: Tableau, place: Place, text: str) -> Fraction:
-    """Return half a unit of a text in a place."""
-    key = str(place).removeprefix(place.array)
-    return half_unit(tableau.digits, place.array, key, Exact.of(text))
 
 
 def determined(proposals: Sequence[Proposal]) -> str:

@@ -8,6 +8,7 @@ ACM 7 (1964) 171–176, with the first two added).
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator
 from fractions import Fraction
 from math import floor
@@ -22,6 +23,8 @@ LARGEST_SMALL_DENOMINATOR = 1000
 MOST_FACTORS = 12
 LONGEST_TYPED = 80
 DIGITS = "0123456789/"
+_ODD = re.compile(r"-?0\d|[^/]*/(0|1$)")
+"""What nobody prints: 03, 1/03, 2/1."""
 
 
 def text_distance(printed: str, repaired: str) -> int:
@@ -57,7 +60,8 @@ def nearest_spelling(printed: str, value: Exact, slack: Fraction, digits: int | 
             found = (rank, miss, text != value.canonical, text)
             best = found if best is None else min(best, found)
     if best is not None:
-        return best[3]
+        reduced = not slack and text_distance(printed, value.canonical) <= 2
+        return value.canonical if reduced else best[3]
     texts = _fractions(_plain(typed), value, slack)
     if slack:
         texts = [*texts, decimal_text(value, digits or 17)]
@@ -138,6 +142,8 @@ def _read(text: str) -> Exact | None:
         if "s" in text or "(" in text:
             return Exact.of(text)
         above, stroke, below = text.partition("/")
+        if _ODD.match(text):
+            return None
         if stroke and not (above.lstrip("-").isdigit() and below.isdigit()):
             return None
         return Exact(Fraction(int(above), int(below)) if stroke else Fraction(above))
