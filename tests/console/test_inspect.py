@@ -54,8 +54,8 @@ def test_properties_proof_source_and_notes_are_there():
         "heun-euler-2-1\n  Heun–Euler 2(1)\n",
         "  authors        K. Heun (1900)",
         "  comes from     built-in",
-        "  rate calls a step               2",
-        "  stability polynomial            1, 1, 1/2",
+        "  rate calls a step                    2",
+        "  stability polynomial                 1, 1, 1/2",
         "  proof  exact: order 2(1); in float64 to",
         "  weaknesses\n  - The estimate is that of Euler’s method",
     ):

@@ -104,7 +104,9 @@ def names(
     stages: int | Collection[int] | None = ...,
     text: str | None = ...,
     embedded: bool | None = ...,
+    needs: str | None = ...,
     sort: str | None = ...,
+    columns: str | Collection[str] | None = ...,
     details: Literal[False] = ...,
     registry: Registry | None = ...,
 ) -> tuple[str, ...]: ...
@@ -117,7 +119,9 @@ def names(
     stages: int | Collection[int] | None = ...,
     text: str | None = ...,
     embedded: bool | None = ...,
+    needs: str | None = ...,
     sort: str | None = ...,
+    columns: str | Collection[str] | None = ...,
     details: Literal[True],
     registry: Registry | None = ...,
 ) -> tuple[Summary, ...]: ...
@@ -129,7 +133,9 @@ def names(
     stages: int | Collection[int] | None = None,
     text: str | None = None,
     embedded: bool | None = None,
+    needs: str | None = None,
     sort: str | None = None,
+    columns: str | Collection[str] | None = None,
     details: bool = False,
     registry: Registry | None = None,
 ) -> tuple[str, ...] | tuple[Summary, ...]:
@@ -140,25 +146,30 @@ def names(
         stages: the number of stages, or several to choose from.
         text: each word of it occurs in the slug, a name or an author; case, accents and hyphens do not count.
         embedded: True for pairs only, False for methods without an error estimate of their own.
+        needs: what a method must have, such as `"order>=4, ssp>0, imag/stages>0.7, embedded, exact"`: facts
+            and properties by the names that `inspect` has, their ratios, and comparisons.
         sort: "order", "stages", "slug", "year", "floor"; as they are offered where it is left out.
+        columns: properties and ratios that go into `Summary.values`, such as `"imag/stages, ssp"`.
         details: return a `Summary` for each in place of its slug.
         registry: whose methods; by default those of the usual registry.
 
     Raises:
-        BadRequest: `sort` is none of these.
+        BadRequest: `sort` is none of these, or `needs` or `columns` name no property or break the grammar.
 
     Example:
         >>> names(order=range(3, 5), text="Kutta", embedded=False)
         ('kutta-3', 'kutta-4', 'kutta-three-eighths-4')
+        >>> "ssp-4-stages-10" in names(needs="order>=4, ssp/stages>0.5")
+        True
     """
     if sort is not None and sort not in SORTS:
         near = near_names(sort, SORTS)
         hint = f"\n  Near: {near[0]}." if near else ""
         raise BadRequest(f"sort={sort!r} is none of {', '.join(SORTS)}{hint}", argument="sort")
     where = _in(registry)
-    if not details and (order, stages, text, embedded, sort) == (None,) * 5:
+    if not details and (order, stages, text, embedded, needs, sort) == (None,) * 6:
         return where.names()
-    found = [
+    found: Iterable[Summary] = [
         summary
         for summary in where.summaries()
         if _fits(summary.order, order)
@@ -166,8 +177,12 @@ def names(
         and (embedded is None or embedded == (summary.embedded_order is not None))
         and _mentions(summary, text)
     ]
+    if needs is not None or columns is not None:
+        from newel.catalogue.searching import searched
+
+        found = searched(found, where, needs, columns)
     if sort is not None:
-        found.sort(key=lambda summary: _rank(summary, sort))
+        found = sorted(found, key=lambda summary: _rank(summary, sort))
     return tuple(found) if details else tuple(summary.slug for summary in found)
 
 

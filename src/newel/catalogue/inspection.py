@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 import attrs
 
 from newel.catalogue.registry import Registry, default_registry
+from newel.catalogue.values import Values
 from newel.errors import NotProved
 
 if TYPE_CHECKING:
@@ -95,12 +96,14 @@ def inspect(
 
 def _inspected(method: str | Path | Tableau, registry: Registry, progress: Progress | None) -> Inspection:
     from newel.methods.analysis.properties import PROPERTIES
+    from newel.methods.order_conditions import proof_key
 
     try:
         tableau = registry.find(method, progress)
     except NotProved as error:
         tableau = registry.load(method).with_proof(error.verdict)
-    properties = {each.name: each.function(tableau) for each in PROPERTIES}
+    values = Values(registry.cache)
+    properties = values.of(proof_key(tableau), lambda: tableau, [each.name for each in PROPERTIES])
     return Inspection(tableau, properties, tableau.proof)
 
 

@@ -53,7 +53,8 @@ class Registry:
     ) -> None:
         self._folders = None if folders is None else tuple(Path(folder).expanduser() for folder in folders)
         self._ask_packages = plugins
-        self._proofs = Proofs(_folder(cache))
+        self.cache = _folder(cache)
+        self._proofs = Proofs(self.cache)
         self._lock = threading.RLock()
         self._gathered: tuple[Shelves, Methods, Equipment] | None = None
         self._found: dict[str, Tableau] = {}

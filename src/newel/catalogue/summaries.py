@@ -28,6 +28,8 @@ class Summary:
         outcome: "exact" or "rounded" as proved, or "unproven" for a method that is taken on trust.
         working_floor: the largest residual of the float64 coefficients (unitless); None where unproven.
         origin: where the method comes from.
+        values: of the columns that were asked for, by their text.
+        proof_key: under which values are remembered; None where it is not known without the numbers.
     """
 
     slug: str
@@ -42,6 +44,8 @@ class Summary:
     outcome: str
     working_floor: float | None
     origin: str
+    values: Mapping[str, Any] = attrs.field(factory=dict)
+    proof_key: str | None = attrs.field(default=None, repr=False, eq=False)
 
     @classmethod
     def of(cls, tableau: Tableau) -> Summary:
@@ -88,6 +92,7 @@ def listed_summary(slug: str, file: object) -> Summary | None:
         known |= {name: tuple(entry[name]) for name in ("also_called", "authors")}
         verdict = entry["verdict"]
         floor = float(verdict["working_floor"])
-        return Summary(**known, outcome=verdict["outcome"], working_floor=floor, origin="built-in")
+        facts = {"outcome": verdict["outcome"], "working_floor": floor, "proof_key": entry["key"]}
+        return Summary(**known, **facts, origin="built-in")
     except (OSError, KeyError, TypeError, ValueError):
         return None

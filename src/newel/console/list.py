@@ -18,7 +18,10 @@ if TYPE_CHECKING:
 __all__ = ["PASTE", "WHAT", "add", "draw", "run"]
 
 WHAT = "List the methods that there are."
-PASTE = ("newel list --order 5 --embedded", "newel list --text kutta --sort year")
+PASTE = (
+    "newel list --order 5 --embedded",
+    'newel list --needs "order>=3, ssp>0" --columns "ssp/calls, real/calls, registers"',
+)
 
 _ROOM_FOR_NAMES = 110
 
@@ -37,6 +40,16 @@ def add(parser: ArgumentParser) -> None:
         help="only pairs, or only methods without an error estimate of their own",
     )
     parser.add_argument(
+        "--needs",
+        metavar="NEEDS",
+        help="only what has these: 'order>=4, ssp>0, imag/stages>0.7, embedded, exact'",
+    )
+    parser.add_argument(
+        "--columns",
+        metavar="NAMES",
+        help="properties to show, by the names that inspect --json has: 'ssp, imag/calls'",
+    )
+    parser.add_argument(
         "--sort", default="order", metavar="BY", help="order (the default), stages, slug, year or floor"
     )
 
@@ -51,6 +64,8 @@ def run(options: Namespace, screen: Screen) -> int:
         stages=None if options.stages is None else whole_numbers(options.stages, "--stages"),
         text=options.text,
         embedded=options.embedded,
+        needs=options.needs,
+        columns=options.columns,
         sort=options.sort,
         details=True,
         registry=registry,
@@ -58,11 +73,16 @@ def run(options: Namespace, screen: Screen) -> int:
     if options.json:
         import attrs
 
-        methods = [attrs.asdict(summary) for summary in found]
+        methods = [_plain(attrs.asdict(summary)) for summary in found]
         screen.document("newel-list/1", {"methods": methods, "families": registry.families()})
     else:
         draw(screen, found, len(registry.names()), registry.families())
     return 0
+
+
+def _plain(summary: dict[str, Any]) -> dict[str, Any]:
+    """Return a summary as JSON has it: without the key of its proof, and values only where asked for."""
+    return {name: x for name, x in summary.items() if name != "proof_key" and (name != "values" or x)}
 
 
 def draw(screen: Screen, found: Sequence[Summary], known: int, families: Sequence[str]) -> None:
@@ -86,15 +106,27 @@ def _table(found: Sequence[Summary], with_names: bool) -> Table:
 
     table = Table(box=box.SIMPLE_HEAD, pad_edge=False, padding=(0, 1, 0, 0), show_edge=False)
     table.add_column("slug", style="bold", overflow="fold")
-    if with_names:
+    asked = list(found[0].values)
+    if with_names and not asked:
         table.add_column("name", overflow="fold")
-    for title in ("order", "stages", "year"):
-        table.add_column(title, justify="right", no_wrap=True)
-    table.add_column("proof", no_wrap=True)
-    table.add_column("floor", justify="right", no_wrap=True)
+    for title in asked or ("order", "stages", "year"):
+        table.add_column(title, justify="right", no_wrap=not asked, overflow="fold")
+    if not asked:
+        table.add_column("proof", no_wrap=True)
+        table.add_column("floor", justify="right", no_wrap=True)
     for summary in found:
-        table.add_row(*_cells(summary, with_names))
+        table.add_row(*(_asked_cells(summary) if asked else _cells(summary, with_names)))
     return table
+
+
+def _marked(summary: Summary) -> str:
+    return summary.slug + ("" if summary.origin == "built-in" else " *")
+
+
+def _asked_cells(summary: Summary) -> list[str]:
+    from newel.console.words import value
+
+    return [_marked(summary), *("" if x is None else value(x) for x in summary.values.values())]
 
 
 def _cells(summary: Summary, with_names: bool) -> list[Any]:
@@ -102,12 +134,11 @@ def _cells(summary: Summary, with_names: bool) -> list[Any]:
 
     from newel.console.words import OUTCOME_STYLES
 
-    mark = "" if summary.origin == "built-in" else " *"
     pair = "" if summary.embedded_order is None else f"({summary.embedded_order})"
     floor = "" if summary.working_floor is None else f"{summary.working_floor:.1e}"
     names = [summary.name] if with_names else []
     return [
-        summary.slug + mark,
+        _marked(summary),
         *names,
         f"{summary.order}{pair}",
         str(summary.stages),

@@ -44,14 +44,14 @@ def filled(text: str, width: int, first: str, rest: str) -> str:
     return wrapper.fill(text) or first.rstrip()
 
 
-def value(found: Any) -> str:
-    """Return a property as people read it; an exact number of many digits by its first twelve."""
+def value(found: Any, digits: int = 4) -> str:
+    """Return a property as people read it: floats to some digits, a long exact number by its first twelve."""
     if found is None:
         return "none"
     if isinstance(found, bool):
         return "yes" if found else "no"
     if isinstance(found, float):
-        return f"{found:.4g}"
+        return f"{found:.{digits}g}"
     if isinstance(found, tuple):
         return ", ".join(map(value, found))
     text = str(found)

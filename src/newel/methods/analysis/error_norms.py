@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from fractions import Fraction
+from functools import lru_cache
 from math import isqrt
 from operator import mul
 
-from newel.methods.tableau import Tableau
+from newel.methods.tableau import Row, Tableau
 from newel.methods.trees import trees, trees_up_to
 
 __all__ = ["HIGHEST", "error_norm", "error_terms", "largest_error_term"]
@@ -39,7 +40,7 @@ def error_terms(tableau: Tableau, order: int, embedded: bool = False) -> list[Fr
     weights = tableau.embedded_weights if embedded else tableau.weights
     if weights is None or order > HIGHEST:
         return None
-    stages = _stage_vectors(tableau, order)
+    stages = _stage_vectors(tableau.matrix, order)
     b = [x.scaled_floor(_BITS) for x in weights]
     terms = []
     for tree in trees(order):
@@ -48,17 +49,18 @@ def error_terms(tableau: Tableau, order: int, embedded: bool = False) -> list[Fr
     return terms
 
 
-def _stage_vectors(tableau: Tableau, order: int) -> list[list[int]]:
+@lru_cache(maxsize=2)
+def _stage_vectors(matrix: tuple[Row, ...], order: int) -> list[list[int]]:
     """Return Φ(t), in units of 2^−bits, of every tree of up to `order` vertices.
 
     Grafting `last` onto the root of `rest` multiplies: Φ(t) = Φ(rest)·(A Φ(last)), entry by entry.
     """
-    rows = [[x.scaled_floor(_BITS) for x in row[:i]] for i, row in enumerate(tableau.matrix)]
+    rows = [[x.scaled_floor(_BITS) for x in row[:i]] for i, row in enumerate(matrix)]
     stages: list[list[int]] = []
     grafted: dict[int, list[int]] = {}
     for tree in trees_up_to(order):
         if tree.last < 0:
-            stages.append([1 << _BITS] * tableau.stages)
+            stages.append([1 << _BITS] * len(matrix))
             continue
         if tree.last not in grafted:
             grafted[tree.last] = [sum(map(mul, row, stages[tree.last])) >> _BITS for row in rows]

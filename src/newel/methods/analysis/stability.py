@@ -4,13 +4,17 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
 from fractions import Fraction
-from math import lcm
+from math import factorial, lcm
 from operator import mul
 
 from newel.methods.exact import Exact
 from newel.methods.tableau import Row, Tableau
 
-__all__ = ["stability_polynomial"]
+__all__ = ["growth_polynomial", "stability_polynomial"]
+
+_BITS = 512
+_KEPT = 256
+_CLOSE = Fraction(1, 10**9)
 
 
 def stability_polynomial(tableau: Tableau, embedded: bool = False) -> tuple[Exact, ...] | None:
@@ -41,6 +45,57 @@ def stability_polynomial(tableau: Tableau, embedded: bool = False) -> tuple[Exac
     while not coefficients[-1]:
         coefficients.pop()
     return tuple(coefficients)
+
+
+def growth_polynomial(tableau: Tableau, embedded: bool = False) -> tuple[Exact, ...] | None:
+    """Return the stability polynomial as it is meant, where the printed numbers are rounded.
+
+    Rounded coefficients meet r_k = 1/k! up to the order p only to their digits, and a limit would hang on the
+    last of them: up to the claimed order 1/k! itself is taken where it is met to 9 digits, beyond it r_k to
+    256 bits. Exact methods are left as they are, but for those that mix two square roots, which are computed
+    to 512 bits in the same way.
+
+    Args:
+        tableau: the method.
+        embedded: whether the embedded weights are meant.
+
+    Returns:
+        Exact numbers (unitless) as in `stability_polynomial`; None where there are no embedded weights.
+
+    >>> euler = Tableau("euler-1", order=1, matrix=[[]], weights=["0.9999999999"], digits=10)
+    >>> [str(r) for r in growth_polynomial(euler)]
+    ['1', '1']
+    """
+    weights = tableau.embedded_weights if embedded else tableau.weights
+    if weights is None:
+        return None
+    exact = stability_polynomial(tableau, embedded)
+    if exact is not None and tableau.is_exact:
+        return exact
+    found = _fixed_point(tableau.matrix, weights) if exact is None else exact
+    order = (tableau.embedded_order if embedded else tableau.order) or 0
+    meant = [_meant(r, k, order) for k, r in enumerate(found)]
+    while not meant[-1]:
+        meant.pop()
+    return tuple(meant)
+
+
+def _meant(r: Exact, k: int, order: int) -> Exact:
+    series = Fraction(1, factorial(k))
+    if k <= order and abs(r - series) < _CLOSE * series:
+        return Exact(series)
+    return Exact(Fraction(r.scaled_floor(_KEPT), 1 << _KEPT))
+
+
+def _fixed_point(matrix: Sequence[Row], weights: Row) -> list[Exact]:
+    """Return the coefficients to 512 bits, whatever square roots occur."""
+    rows = [[x.scaled_floor(_BITS) for x in row[:i]] for i, row in enumerate(matrix)]
+    b, x = [w.scaled_floor(_BITS) for w in weights], [1 << _BITS] * len(weights)
+    found = [Exact(1)]
+    for _ in weights:
+        found.append(Exact(Fraction(sum(map(mul, b, x)), 1 << 2 * _BITS)))
+        x = [sum(map(mul, row, x)) >> _BITS for row in rows]
+    return found
 
 
 def _moments(matrix: Sequence[Row], weights: Row, radicand: int) -> list[Exact]:

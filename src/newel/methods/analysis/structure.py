@@ -2,12 +2,24 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
+from fractions import Fraction
 from typing import Literal
 
 from newel.methods.exact import Exact
 from newel.methods.tableau import Tableau
 
-__all__ = ["computed_stages", "estimator", "has_monotone_nodes", "largest_coefficient", "precision"]
+__all__ = [
+    "computed_stages",
+    "dominant_stage_order",
+    "estimator",
+    "has_monotone_nodes",
+    "largest_coefficient",
+    "precision",
+    "stage_order",
+]
+
+_CLOSE = Fraction(1, 10**9)
 
 
 def computed_stages(tableau: Tableau) -> int:
@@ -59,3 +71,53 @@ def precision(tableau: Tableau) -> Literal["exact", "rounded"]:
     'rounded'
     """
     return "exact" if tableau.is_exact else "rounded"
+
+
+def stage_order(tableau: Tableau) -> int:
+    """Return the stage order: the largest q with Σ_j a_ij c_j^(k−1) = c_i^k/k for all stages i and k ≤ q.
+
+    An explicit method whose second node is not 0 has stage order 1; `dominant_stage_order` tells more.
+    Rounded numbers are compared to 9 digits. Source: E. Hairer and G. Wanner, Solving Ordinary Differential
+    Equations II, section IV.5, the condition C(q).
+
+    >>> stage_order(Tableau("midpoint-2", order=2, matrix=[[], ["1/2"]], weights=[0, 1]))
+    1
+    """
+    return _common_stage_order(tableau, range(tableau.stages))
+
+
+def dominant_stage_order(tableau: Tableau) -> int:
+    """Return the stage order of the stages whose weights are not 0, as `stage_order`; at most the order.
+
+    >>> dominant_stage_order(Tableau("heun-2", order=2, matrix=[[], [1]], weights=["1/2", "1/2"]))
+    1
+    """
+    return _common_stage_order(tableau, (i for i, b in enumerate(tableau.weights) if b))
+
+
+def _common_stage_order(tableau: Tableau, stages: Iterable[int]) -> int:
+    near = Fraction(0) if tableau.is_exact else _CLOSE
+    radicands = {x.radicand for row in (*tableau.matrix, tableau.nodes) for x in row} - {1}
+    if len(radicands) > 1:
+        near = _CLOSE
+    held = tableau.order
+    for i in stages:
+        held = min(held, _order_of_stage(tableau, i, held, near, len(radicands) > 1))
+    return held
+
+
+def _order_of_stage(tableau: Tableau, stage: int, most: int, near: Fraction, mixed: bool) -> int:
+    row, nodes, c = tableau.matrix[stage][:stage], tableau.nodes, tableau.nodes[stage]
+    if mixed:
+        row, nodes = tuple(map(_in_decimals, row)), tuple(map(_in_decimals, nodes))
+        c = nodes[stage]
+    terms = list(row)
+    for k in range(1, most + 1):
+        if abs(sum(terms, Exact(0)) - c**k / k) > near:
+            return k - 1
+        terms = [x * nodes[j] for j, x in enumerate(terms)]
+    return most
+
+
+def _in_decimals(x: Exact) -> Exact:
+    return Exact(Fraction(x.scaled_floor(256), 1 << 256))
