@@ -22,6 +22,24 @@ __all__ = ["newel_controllers", "newel_sinks", "newel_tableaux", "tableau_files"
 
 PACKAGE = "newel.tableaux"
 
+_RULES = "newel.methods.families"
+_FAMILIES = {
+    "doubled-{method}": f"{_RULES}.step_doubling:doubled",
+    "extrapolated-euler-{order}": f"{_RULES}.extrapolation:extrapolated_euler",
+    "extrapolated-euler-romberg-{order}": f"{_RULES}.extrapolation:extrapolated_euler_romberg",
+    "extrapolated-euler-bulirsch-{order}": f"{_RULES}.extrapolation:extrapolated_euler_bulirsch",
+    "extrapolated-midpoint-{order}": f"{_RULES}.extrapolation:extrapolated_midpoint",
+    "extrapolated-midpoint-romberg-{order}": f"{_RULES}.extrapolation:extrapolated_midpoint_romberg",
+    "extrapolated-midpoint-bulirsch-{order}": f"{_RULES}.extrapolation:extrapolated_midpoint_bulirsch",
+    "extrapolated-midpoint-smoothed-{order}": f"{_RULES}.extrapolation:extrapolated_midpoint_smoothed",
+    "chebyshev-1-stages-{stages}": f"{_RULES}.recursions:chebyshev_1",
+    "chebyshev-2-stages-{stages}": f"{_RULES}.recursions:chebyshev_2",
+    "legendre-1-stages-{stages}": f"{_RULES}.recursions:legendre_1",
+    "legendre-2-stages-{stages}": f"{_RULES}.recursions:legendre_2",
+    "ssp-2-stages-{stages}": f"{_RULES}.shocks:ssp_2",
+    "ssp-3-stages-{stages}": f"{_RULES}.shocks:ssp_3",
+}
+
 _CONTROLLERS = (
     "elementary",
     "gustafsson-pi",
@@ -60,7 +78,7 @@ def newel_tableaux() -> Mapping[str, Path | Callable[[], Tableau] | str]:
         slug: file if isinstance(file, Path) else partial(_read, file)
         for slug, file in tableau_files().items()
     }
-    return single | {"doubled-{method}": "newel.methods.families.step_doubling:doubled"}
+    return {**single, **_FAMILIES}
 
 
 def _read(file: Traversable) -> Tableau:

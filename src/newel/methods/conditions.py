@@ -12,7 +12,7 @@ from __future__ import annotations
 from collections.abc import Callable, Iterator, Sequence
 from fractions import Fraction
 from functools import cached_property
-from math import inf
+from math import factorial, inf
 from typing import Any, Literal
 
 import attrs
@@ -29,6 +29,7 @@ from newel.methods.elementary_weights import (
     ScaledSurds,
 )
 from newel.methods.exact import Exact
+from newel.methods.residues import Residues
 from newel.methods.sensitivities import Sensitivities
 from newel.methods.trees import Tree, trees
 from newel.methods.verdict import Failure
@@ -37,6 +38,9 @@ __all__ = ["LIMIT", "Conditions", "Formula", "Part", "allowed", "readable"]
 
 LIMIT = 1e-12
 """The largest residual that rounded coefficients may leave, whatever digits are stated."""
+
+MANY_TREES = 10
+"""Above this order exact conditions are decided for all trees at once, modulo primes."""
 
 HANDFUL = 5
 LONGEST_EXACT = 48
@@ -102,6 +106,16 @@ class Conditions:
         self.sensitivities = Sensitivities(floats)
         self.rounded_matrix = bool(slack.any())
         self._exact_vectors: dict[Formula, Any] = {}
+        self._zeros: dict[Formula, NDArray[np.bool_]] = {}
+
+    def decide(self, parts: Sequence[Part]) -> None:
+        """Decide the conditions of parts with high claims, where all coefficients are exact, in one go."""
+        highest = max(part.claimed for part in parts)
+        formulas = [f for part in parts for f in part.formulas if not f.slack.any()]
+        if highest > MANY_TREES and formulas and not self.rounded_matrix:
+            exact = Residues(self.matrix, self.radicand)
+            zeros = exact.zeros([(f.weights, f.power) for f in formulas], highest)
+            self._zeros = dict(zip(formulas, zeros, strict=True))
 
     @cached_property
     def exact(self) -> ElementaryWeights[Any]:
@@ -120,13 +134,48 @@ class Conditions:
         if part.name == "continuous":
             highest = min(highest, len(part.formulas))
         while order <= highest:
+            if order > part.claimed and self._plainly_fails(part, order):
+                return order - 1, []
             failures = self._failures(part, order, HANDFUL if order <= part.claimed else 1)
             if failures:
                 return order - 1, failures if order <= part.claimed else []
             order += 1
         return order - 1, []
 
+    def _plainly_fails(self, part: Part, order: int) -> bool:
+        """Tell whether the bushy or the tall tree disproves an order, for which no other tree is needed."""
+        arithmetic = self.arithmetic
+        nodes = arithmetic.apply(arithmetic.ones())
+        bushy, tall = nodes, nodes
+        for _ in range(order - 2):
+            bushy, tall = arithmetic.product(bushy, nodes), arithmetic.apply(tall)
+        for formula in part.formulas:
+            weights = arithmetic.vector(formula.weights)
+            rounded = self.rounded_matrix or bool(formula.slack.any())
+            wanted = formula.power in (None, order)
+            for stages, density in ((bushy, order), (tall, factorial(order))):
+                residual = arithmetic.residual(weights, stages, Fraction(int(wanted), density))
+                if residual.excludes_zero and (not rounded or residual.least > LIMIT):
+                    return order > 1
+        return False
+
+    def _decided_failures(self, part: Part, order: int, most: int) -> list[Failure]:
+        """Return the failures among conditions that `decide` has decided."""
+        failures: list[Failure] = []
+        for tree in trees(order):
+            for formula in part.formulas:
+                if not self._zeros[formula][tree.index] and len(failures) < most:
+                    vector = self.arithmetic.vector(formula.weights)
+                    stages = self.fixed.stages(tree.index)
+                    residual = self.arithmetic.residual(vector, stages, formula.target(tree))
+                    failures.append(self._failure(part, formula, tree, float(residual), 0.0))
+            self.tick()
+        return failures
+
     def _failures(self, part: Part, order: int, most: int) -> list[Failure]:
+        last = trees(order)[-1].index
+        if all(f in self._zeros and last < len(self._zeros[f]) for f in part.formulas):
+            return self._decided_failures(part, order, most)
         failures: list[Failure] = []
         doubtful: list[tuple[int, Tree, Interval]] = []
         vectors = [self.arithmetic.vector(formula.weights) for formula in part.formulas]

@@ -52,23 +52,22 @@ class ElementaryWeights(Generic[V]):
 
     def __init__(self, arithmetic: Arithmetic[V]) -> None:
         self.arithmetic = arithmetic
-        self._stages: list[V] = [arithmetic.ones()]
+        self._stages: dict[int, V] = {0: arithmetic.ones()}
         self._applied: dict[int, V] = {}
 
     def stages(self, index: int) -> V:
-        """Return Φ of the tree with this index."""
-        known = self._stages
-        if index >= len(known):
-            product = self.arithmetic.product
-            for missing in range(len(known), index + 1):
-                tree = tree_at(missing)
-                known.append(product(known[tree.rest], self._apply(tree.last)))
-        return known[index]
+        """Return Φ of the tree with this index; only the trees that it is made of are computed too."""
+        found = self._stages.get(index)
+        if found is None:
+            tree = tree_at(index)
+            found = self.arithmetic.product(self.stages(tree.rest), self._apply(tree.last))
+            self._stages[index] = found
+        return found
 
     def _apply(self, index: int) -> V:
         found = self._applied.get(index)
         if found is None:
-            found = self._applied[index] = self.arithmetic.apply(self._stages[index])
+            found = self._applied[index] = self.arithmetic.apply(self.stages(index))
         return found
 
 

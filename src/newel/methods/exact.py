@@ -88,6 +88,19 @@ class Exact:
             repr(value), f"a {type(value).__name__} is no exact number; give an int, a Fraction or a text"
         )
 
+    @classmethod
+    def of_decimal(cls, digits: int, places: int) -> Exact:
+        """Return digits·10^−places with the text of that decimal, which is not read again.
+
+        >>> Exact.of_decimal(-125, 2), Exact.of_decimal(5, 3)
+        (Exact.of('-1.25'), Exact.of('0.005'))
+        """
+        padded = str(abs(digits)).rjust(places + 1, "0")
+        text = f"{'-' if digits < 0 else ''}{padded[: len(padded) - places]}.{padded[len(padded) - places :]}"
+        made = cls.__new__(cls)
+        made.__attrs_init__(Fraction(digits, 10**places), _ZERO, 1, text)
+        return made
+
     @property
     def form(self) -> Form:
         """How the number was printed: "decimal" where its text holds a decimal point or an exponent."""

@@ -12,17 +12,22 @@ import hashlib
 import json
 from collections.abc import Callable, Iterator, Mapping
 from fractions import Fraction
-from typing import TYPE_CHECKING, Literal
+from typing import TYPE_CHECKING, Any, Literal
+
+import attrs
 
 from newel.methods.coefficients import Coefficients
-from newel.methods.conditions import Conditions, Part, allowed, readable
+from newel.methods.conditions import HANDFUL, MANY_TREES, Conditions, Part, allowed, readable
 from newel.methods.elementary_weights import ElementaryWeights, FixedPoint
 from newel.methods.exact import Exact
+from newel.methods.float_views import largest_float_residual
 from newel.methods.remarks import remarks, undetermined
+from newel.methods.storage_proof import storage_failures
 from newel.methods.trees import tree_count, trees
 from newel.methods.verdict import Failure, Verdict
 
 if TYPE_CHECKING:
+    from newel.methods.storage import Storage
     from newel.methods.tableau import Tableau
 
 __all__ = ["PROOF_VERSION", "Failure", "Verdict", "proof_key", "prove", "prove_coefficients"]
@@ -35,7 +40,7 @@ Progress = Callable[[int, int], None]
 
 
 def prove(tableau: Tableau, progress: Progress | None = None) -> Verdict:
-    """Prove what a tableau claims: orders of all its weights, and nodes that are the row sums.
+    """Prove what a tableau claims: orders of all its weights, row sums as nodes, and its storage form.
 
     Args:
         tableau: the method; its `proof` plays no part.
@@ -52,7 +57,14 @@ def prove(tableau: Tableau, progress: Progress | None = None) -> Verdict:
     >>> verdict.outcome, verdict.order
     ('exact', 2)
     """
-    return prove_coefficients(Coefficients.of(tableau), _least_digits(tableau), progress)
+    verdict = prove_coefficients(Coefficients.of(tableau), _least_digits(tableau), progress)
+    differing = tuple(storage_failures(tableau))
+    if differing:
+        return attrs.evolve(verdict, outcome="fails", failures=(*verdict.failures, *differing[:HANDFUL]))
+    rounded_form = tableau.storage is not None and tableau.storage.digits is not None
+    if verdict.outcome == "exact" and rounded_form:
+        return attrs.evolve(verdict, outcome="rounded", digits=_least_digits(tableau))
+    return verdict
 
 
 def prove_coefficients(
@@ -73,6 +85,7 @@ def prove_coefficients(
         coefficients.bits,
         _ticker(parts, progress),
     )
+    conditions.decide(parts)
     failures = [*_row_sums(coefficients), *_ends(coefficients)]
     orders: dict[str, int] = {}
     for part in parts:
@@ -108,6 +121,8 @@ def proof_key(tableau: Tableau) -> str:
         "digits": dict(digits) if isinstance(digits, Mapping) else digits,
         "version": PROOF_VERSION,
     }
+    if tableau.storage is not None:
+        facts["storage"] = _storage_facts(tableau.storage)
     return hashlib.sha256(json.dumps(facts, sort_keys=True).encode("ascii")).hexdigest()
 
 
@@ -119,19 +134,31 @@ def working_floor(coefficients: Coefficients, order: int) -> float:
     weights, which carry nothing on, take no part.
     """
     matrix = [[Exact(Fraction(x)) for x in row] for row in coefficients.floats("matrix").tolist()]
-    weights = [Exact(Fraction(x)) for x in coefficients.floats("weights").tolist()]
-    arithmetic = FixedPoint(matrix, coefficients.bits - 256 + FLOOR_BITS)
-    vectors, vector = ElementaryWeights(arithmetic), arithmetic.vector(weights)
-    largest = 0.0
-    for n in range(1, order + 1):
-        for tree in trees(n):
-            residual = arithmetic.residual(vector, vectors.stages(tree.index), Fraction(1, tree.density))
-            largest = max(largest, residual.magnitude)
+    if order > MANY_TREES and not coefficients.rounded:
+        views, weight_views = coefficients.floats("matrix"), coefficients.floats("weights")
+        largest = largest_float_residual(
+            coefficients.matrix, coefficients.weights, views, weight_views, order
+        )
+    else:
+        largest = _largest_residual(coefficients, matrix, order)
     if coefficients.nodes is not None:
         for node, row in zip(coefficients.floats("nodes").tolist(), matrix, strict=True):
             exactly = sum((x.rational for x in row), Fraction(-node))
             largest = max(largest, abs(float(exactly)))
     return largest
+
+
+def _largest_residual(coefficients: Coefficients, matrix: list[list[Exact]], order: int) -> float:
+    """Return the largest residual of the float64 weights with this matrix, in fixed point, tree by tree."""
+    weights = [Exact(Fraction(x)) for x in coefficients.floats("weights").tolist()]
+    arithmetic = FixedPoint(matrix, coefficients.bits - 256 + FLOOR_BITS)
+    vectors, vector = ElementaryWeights(arithmetic), arithmetic.vector(weights)
+    residuals = (
+        arithmetic.residual(vector, vectors.stages(tree.index), Fraction(1, tree.density))
+        for n in range(1, order + 1)
+        for tree in trees(n)
+    )
+    return max((residual.magnitude for residual in residuals), default=0.0)
 
 
 def _row_sums(coefficients: Coefficients) -> Iterator[Failure]:
@@ -194,9 +221,17 @@ def _claim(part: Part, proven: int) -> Failure:
 
 def _least_digits(tableau: Tableau) -> int | None:
     digits = tableau.digits
-    if isinstance(digits, Mapping):
-        return min((value for value in digits.values() if isinstance(value, int)), default=None)
-    return digits
+    stated: list[Any] = list(digits.values()) if isinstance(digits, Mapping) else [digits]
+    stated.append(None if tableau.storage is None else tableau.storage.digits)
+    return min((value for value in stated if isinstance(value, int)), default=None)
+
+
+def _storage_facts(storage: Storage) -> dict[str, Any]:
+    arrays = {
+        key: [[x.canonical for x in row] if isinstance(row, tuple) else row.canonical for row in rows]
+        for key, rows in storage.arrays().items()
+    }
+    return {"form": storage.form, "digits": storage.digits, **arrays}
 
 
 def _ticker(parts: list[Part], progress: Progress | None) -> Callable[[], None]:

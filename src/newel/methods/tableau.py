@@ -29,6 +29,7 @@ from newel.methods.digits import (
     with_node_digits,
 )
 from newel.methods.exact import ExactLike
+from newel.methods.storage import Storage
 from newel.methods.tableau_form import HIGHEST_ORDER, MOST_STAGES, NUMBERS, Row
 
 if TYPE_CHECKING:
@@ -95,6 +96,7 @@ class Tableau:
         digits: significant digits to be trusted: None, an int for all arrays, or a mapping by array (`nodes`,
             `matrix`, `weights`, `embedded`, `continuous`) or entry (`matrix[5][2]`) to an int or "exact".
         notes: strengths, weaknesses, known failures, remarks.
+        storage: the same method in a form for few registers; the proof holds it against the matrix.
         origin: a file, a plugin, or "python"; takes no part in `==`.
         proof: the verdict of the proof, None while there is none; takes no part in `==`.
 
@@ -125,6 +127,7 @@ class Tableau:
     numbers: str
     digits: int | Digits | None
     notes: Notes
+    storage: Storage | None
     origin: str = attrs.field(eq=False)
     proof: Verdict | None = attrs.field(eq=False)
 
@@ -148,6 +151,7 @@ class Tableau:
         numbers: str = "derived",
         digits: int | Mapping[str, Trust] | None = None,
         notes: Notes | None = None,
+        storage: Storage | None = None,
         origin: str = "python",
         proof: Verdict | None = None,
     ) -> None:
@@ -156,6 +160,7 @@ class Tableau:
         trusted = read_digits(digits)
         if notes is not None and not isinstance(notes, Notes):
             raise BadTableau(f"{shown(notes)} is no Notes; write Notes(strengths=[…])", key="notes")
+        form.check_storage(storage, Storage, len(b))
         if nodes is None and isinstance(trusted, Digits):
             trusted = with_node_digits(trusted, len(b))
         self.__attrs_init__(
@@ -176,6 +181,7 @@ class Tableau:
             numbers=form.numbers(numbers),
             digits=trusted,
             notes=Notes() if notes is None else notes,
+            storage=storage,
             origin=form.text(origin, "origin"),
             proof=proof,
         )

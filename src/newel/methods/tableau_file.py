@@ -17,6 +17,7 @@ from typing import Any
 
 from newel.errors import BadTableau, OutputExists, OutputFailed
 from newel.methods.digits import shown
+from newel.methods.storage import ARRAYS_OF, FORMS, Storage
 from newel.methods.tableau import Notes, Tableau
 from newel.methods.tableau_text import NOTE_KEYS, SCHEMA, format_tableau, quoted
 
@@ -27,10 +28,11 @@ MOST_BYTES = 2 * 1024 * 1024
 _KNOWN = {
     "": (
         *("schema", "slug", "name", "also_called", "authors", "year", "source", "numbers"),
-        *("order", "nodes", "matrix", "weights", "digits", "embedded", "continuous", "notes"),
+        *("order", "nodes", "matrix", "weights", "digits", "embedded", "continuous", "storage", "notes"),
     ),
     "embedded": ("order", "weights"),
     "continuous": ("order", "weights"),
+    "storage": ("form", "digits", *(key for keys in ARRAYS_OF.values() for key in keys)),
     "notes": NOTE_KEYS,
 }
 _TO_WRITE = {
@@ -164,6 +166,7 @@ def parse_tableau(text: str, file: str = "tableau") -> Tableau:
             numbers=data["numbers"],
             digits=data.get("digits"),
             notes=Notes(**data.get("notes", {})),
+            storage=_storage(data.get("storage")),
             origin=file,
         )
     except BadTableau as error:
@@ -205,7 +208,7 @@ def _check_keys(data: Mapping[str, Any]) -> None:
         raise BadTableau(f'{shown(data["schema"])}; this newel reads "{SCHEMA}"', key="schema")
     for key in data:
         _check_known(key, "")
-    for table in ("embedded", "continuous", "notes"):
+    for table in ("embedded", "continuous", "storage", "notes"):
         value = data.get(table, {})
         if not isinstance(value, dict):
             raise BadTableau(f"{shown(value)} is no table; write [{table}] on a line of its own", key=table)
@@ -225,6 +228,16 @@ def _check_known(key: str, table: str) -> None:
     near = get_close_matches(key, _KNOWN[table], 1, 0.5)
     hint = f"; the nearest known key is {near[0]}" if near else ""
     raise BadTableau(f"unknown key{where}{hint}\n  Known{where}: {', '.join(_KNOWN[table])}.", key=key[:60])
+
+
+def _storage(table: Mapping[str, Any] | None) -> Storage | None:
+    if table is None:
+        return None
+    if "form" not in table:
+        forms = ", ".join(f'"{name}"' for name in FORMS)
+        raise BadTableau(f"missing; write form = one of {forms}", key="storage.form")
+    arrays = {key: _strings(value, f"storage.{key}") for key, value in table.items() if key != "form"}
+    return Storage(table["form"], **arrays)
 
 
 def _strings(value: Any, key: str) -> Any:

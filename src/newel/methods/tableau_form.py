@@ -176,6 +176,14 @@ def check_shapes(tableau: Tableau) -> None:
         _check_continuous(tableau.continuous_weights, s)
 
 
+def check_storage(storage: Any, kind: type[Any], s: int) -> None:
+    """Raise BadTableau where a storage form is none, or has another number of stages."""
+    if storage is not None and not isinstance(storage, kind):
+        raise BadTableau(f"{shown(storage)} is no Storage; write Storage(form, …)", key="storage")
+    if storage is not None and storage.stages != s:
+        raise BadTableau(f"{storage.stages} stages, but {s} weights", key="storage")
+
+
 def _check_claim(part: str, weights: object, claimed: int | None) -> None:
     if weights is not None and claimed is None:
         raise BadTableau(f"missing: {part}.weights come with the order that they claim", key=f"{part}.order")

@@ -45,6 +45,11 @@ def format_tableau(tableau: Tableau) -> str:
     if t.continuous_weights is not None:
         lines += ["", "[continuous]", f"order = {t.continuous_order}"]
         lines += _lines("weights", t.continuous_weights)
+    if t.storage is not None:
+        lines += ["", "[storage]", f"form = {quoted(t.storage.form)}"]
+        for key, rows in t.storage.arrays().items():
+            lines += _lines(key, rows) if isinstance(rows[0], tuple) else _numbers(key, rows)
+        lines += _digits(t.storage.digits)
     notes = [line for key in NOTE_KEYS for line in _texts(key, getattr(t.notes, key))]
     lines += ["", "[notes]", *notes] if notes else []
     return "\n".join(lines) + "\n"

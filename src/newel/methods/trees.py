@@ -9,18 +9,21 @@ trees is therefore one pass over that list.
 
 from __future__ import annotations
 
-from functools import cached_property
+from functools import cached_property, lru_cache
 from itertools import groupby
 from math import factorial, prod
 from threading import Lock
 from typing import TYPE_CHECKING
 
 import attrs
+import numpy as np
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
 
-__all__ = ["Tree", "tree_at", "tree_count", "trees", "trees_up_to"]
+    from numpy.typing import NDArray
+
+__all__ = ["Tree", "grafts", "tree_at", "tree_count", "trees", "trees_up_to"]
 
 
 @attrs.frozen(eq=False, slots=False)
@@ -142,6 +145,24 @@ def tree_at(index: int) -> Tree:
     while index >= len(_FOREST.all):
         _FOREST.grow(len(_FOREST.by_order))
     return _FOREST.all[index]
+
+
+@lru_cache(maxsize=32)
+def grafts(order: int) -> tuple[NDArray[np.intp], NDArray[np.intp], NDArray[np.int64]]:
+    """Return `rest`, `last` and `density` of all trees with `order` vertices as arrays, read-only.
+
+    >>> [array.tolist() for array in grafts(3)]
+    [[1, 0], [0, 1], [3, 6]]
+    """
+    some = trees(order)
+    arrays = (
+        np.array([tree.rest for tree in some], dtype=np.intp),
+        np.array([tree.last for tree in some], dtype=np.intp),
+        np.array([tree.density for tree in some], dtype=np.int64),
+    )
+    for array in arrays:
+        array.setflags(write=False)
+    return arrays
 
 
 def tree_count(order: int) -> int:

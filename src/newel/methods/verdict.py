@@ -14,17 +14,18 @@ from newel.methods.repairs import Repair
 __all__ = ["Failure", "Verdict"]
 
 Outcome = Literal["exact", "rounded", "fails"]
-Part = Literal["weights", "embedded", "continuous", "row sum", "claim"]
+Part = Literal["weights", "embedded", "continuous", "row sum", "claim", "storage"]
 
 
 @attrs.frozen(kw_only=True)
 class Failure:
     """One condition that does not hold; every number is unitless.
 
-    `part` is "weights", "embedded", "continuous", "row sum" or "claim"; `condition` the tree in bracket
-    notation (for continuous weights followed by the power of θ), `row 3`, or the claim; `residual` what is
-    left over, `residual_text` the same, exactly where it is known exactly; `bound` the largest modulus that
-    would have been accepted, 0 for exact coefficients; `message` one line for people.
+    `part` is "weights", "embedded", "continuous", "row sum", "claim" or "storage"; `condition` the tree in
+    bracket notation (for continuous weights followed by the power of θ), `row 3`, the claim, or the place in
+    the matrix; `residual` what is left over, `residual_text` the same, exactly where it is known exactly;
+    `bound` the largest modulus that would have been accepted, 0 for exact coefficients; `message` one line
+    for people.
     """
 
     part: Part

@@ -2,19 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from fractions import Fraction
 
 from newel.errors import BadRequest
-from newel.methods.digits import Trust, decimal_exponent
-from newel.methods.exact import Exact
-from newel.methods.tableau import HIGHEST_ORDER, MOST_STAGES, Notes, Row, Tableau
+from newel.methods.families.carried import ZERO, Rounded, carried, digits_of, scaled, values
+from newel.methods.tableau import HIGHEST_ORDER, MOST_STAGES, Notes, Tableau
 
 __all__ = ["doubled"]
 
 _HALF = Fraction(1, 2)
-Rounded = tuple[Exact, Fraction]
-"""A number and how far it may be from the one that was meant."""
 
 
 def doubled(tableau: Tableau) -> Tableau:
@@ -53,24 +49,21 @@ def doubled(tableau: Tableau) -> Tableau:
             argument="method",
         )
     nodes, matrix, weights, embedded = _arrays(tableau)
-    digits: dict[str, Trust] = {}
-    for array, row in (("nodes", nodes), ("weights", weights), ("embedded", embedded)):
-        digits |= _digits(tableau, array, row)
-    for i, row in enumerate(matrix, 1):
-        digits |= _digits(tableau, f"matrix[{i}]", row)
+    arrays = {"nodes": nodes, "weights": weights, "embedded": embedded}
+    arrays |= {f"matrix[{i}]": row for i, row in enumerate(matrix, 1)}
     return Tableau(
         f"doubled-{tableau.slug}",
         name=f"{tableau.name}, doubled",
         order=p + 1,
-        matrix=[_values(row) for row in matrix],
-        weights=_values(weights),
-        nodes=_values(nodes),
-        embedded_weights=_values(embedded),
+        matrix=[values(row) for row in matrix],
+        weights=values(weights),
+        nodes=values(nodes),
+        embedded_weights=values(embedded),
         embedded_order=p,
         authors=tableau.authors,
         source=f"step doubling of {tableau.slug}: {tableau.source}",
         numbers=f"derived: by step doubling from {tableau.slug}",
-        digits=digits,
+        digits=digits_of(tableau, arrays),
         notes=Notes(
             remarks=["Two half steps and one full step; the value extrapolated from both is carried on."]
         ),
@@ -85,54 +78,24 @@ def _arrays(t: Tableau) -> tuple[list[Rounded], list[list[Rounded]], list[Rounde
     """
     s, p = t.stages, t.order
     c, b = (
-        _with_half_units(t.nodes, t.half_units("nodes")),
-        _with_half_units(t.weights, t.half_units("weights")),
+        carried(t.nodes, t.half_units("nodes")),
+        carried(t.weights, t.half_units("weights")),
     )
-    A = [_with_half_units(x, u) for x, u in zip(t.matrix, t.half_units("matrix"), strict=True)]
-    zero = (Exact(0), Fraction(0))
-    none, fewer = [zero] * s, [zero] * (s - 1)
-    half = _scaled(b, _HALF)
-    first = [_scaled(A[i], _HALF) + none + fewer for i in range(s)]
-    second = [half + _scaled(A[i], _HALF) + fewer for i in range(s)]
+    A = [carried(x, u) for x, u in zip(t.matrix, t.half_units("matrix"), strict=True)]
+    none, fewer = [ZERO] * s, [ZERO] * (s - 1)
+    half = scaled(b, _HALF)
+    first = [scaled(A[i], _HALF) + none + fewer for i in range(s)]
+    second = [half + scaled(A[i], _HALF) + fewer for i in range(s)]
     full = [A[i][:1] + fewer + none + A[i][1:] for i in range(1, s)]
-    shifted = [(_HALF + x, unit) for x, unit in _scaled(c, _HALF)]
+    shifted = [(_HALF + x, unit) for x, unit in scaled(c, _HALF)]
     gain = Fraction(1, 2**p - 1)
-    one = _scaled(b, -gain)
-    two = _scaled(half, 1 + gain)
+    one = scaled(b, -gain)
+    two = scaled(half, 1 + gain)
     # The first stage serves both y₂ and y₁; what is rounded in b₁ enters it once, by the sum of both factors.
-    shared = _scaled(b[:1], _HALF * (1 + gain) - gain)
+    shared = scaled(b[:1], _HALF * (1 + gain) - gain)
     return (
-        _scaled(c, _HALF) + shifted + c[1:],
+        scaled(c, _HALF) + shifted + c[1:],
         first + second + full,
         shared + two[1:] + two + one[1:],
         half + half + fewer,
     )
-
-
-def _with_half_units(row: Row, units: Sequence[Fraction]) -> list[Rounded]:
-    return list(zip(row, units, strict=True))
-
-
-def _scaled(row: Sequence[Rounded], factor: Fraction) -> list[Rounded]:
-    return [(x * factor, unit * abs(factor)) for x, unit in row]
-
-
-def _values(row: Sequence[Rounded]) -> list[Exact]:
-    return [x for x, _ in row]
-
-
-def _digits(tableau: Tableau, key: str, row: Sequence[Rounded]) -> dict[str, int]:
-    """Return the most digits of each rounded entry whose half unit still covers its rounding."""
-    stated = {}
-    for i, (x, unit) in enumerate(row, 1):
-        if not unit or not x:
-            continue
-        digits = decimal_exponent(x) - decimal_exponent(Exact(2 * unit)) + 1
-        while Fraction(10) ** (decimal_exponent(x) - digits + 1) < 2 * unit:
-            digits -= 1
-        if digits < 1:
-            raise BadRequest(
-                f"{tableau.slug} cannot be doubled: too few of its digits are trusted", argument="method"
-            )
-        stated[f"{key}[{i}]"] = digits
-    return stated
