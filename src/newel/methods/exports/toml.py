@@ -14,7 +14,8 @@ __all__ = ["export_toml"]
 
 
 def export_toml(tableau: Tableau, digits: int | None = None) -> str:
-    """Return the text of a tableau file. Rounded numbers come with `digits`, and `numbers` says so.
+    """Return the text of a tableau file. Rounded numbers come with `digits`, `numbers` says so, and a
+    storage form, which is exact, is left out.
 
     >>> t = Tableau("third-1", order=1, matrix=[[], ["1/3"]], weights=["1/3", "2/3"])
     >>> print(export_toml(t, digits=4).splitlines()[-2:])
@@ -35,6 +36,7 @@ def export_toml(tableau: Tableau, digits: int | None = None) -> str:
             continuous_weights=t.continuous_weights and [_row(row, digits) for row in t.continuous_weights],
             numbers=f"{how.strip()}: {words} to {digits} digits",
             digits=_trusted(t, digits),
+            storage=None,
             proof=None,
         )
     )
