@@ -74,6 +74,16 @@ class Bench:
         return {array: self.tableau.half_units(array) for array in ARRAYS}
 
     @cached_property
+    def longest(self) -> dict[str, int]:
+        """By array, the digits of its longest decimal: what is put beside it is written no shorter."""
+        return {
+            array: max(
+                (len(str(x)) for x in _flat(self.coefficients.array(array)) if x.form == "decimal"), default=1
+            )
+            for array in ARRAYS
+        }
+
+    @cached_property
     def row_defects(self) -> dict[int, tuple[Exact, Fraction]]:
         """Rows whose sum is not the node: what is missing in them, and how well that is known."""
         found = {}
@@ -124,8 +134,9 @@ class Bench:
 
     def spelled(self, proposal: Proposal) -> str:
         """Return the text for a proposal that is nearest to what is printed."""
-        digits = stated(self.tableau, proposal.place)
-        printed = str(self.entry(proposal.place))
+        place = proposal.place
+        digits = max(stated(self.tableau, place) or 1, self.longest.get(place.array, 1))
+        printed = str(self.entry(place))
         return nearest_spelling(printed, proposal.value, proposal.slack, digits)
 
     def tried(self, proposals: Sequence[Proposal | None], what: str = "") -> Repair | None:
@@ -228,6 +239,11 @@ def _beyond(defect: Exact, slack: Fraction) -> bool:
 
 def _at(values: Any, place: Place) -> Any:
     return values[place.row] if place.column < 0 else values[place.row][place.column]
+
+
+def _flat(values: Any) -> Iterator[Exact]:
+    for each in values or ():
+        yield from each if isinstance(each, tuple) else (each,)
 
 
 def _told(changes: Sequence[Change]) -> str:

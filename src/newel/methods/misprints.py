@@ -70,7 +70,7 @@ def find_repairs(tableau: Tableau) -> Search:
 
 def ranked(repairs: list[Repair]) -> tuple[Repair, ...]:
     """Return repairs by distance, then by the length of what is to be written; the same change once."""
-    once = {each.changes: each for each in repairs}
+    once = {each.changes: each for each in reversed(repairs)}
     return tuple(sorted(once.values(), key=lambda each: (each.distance, len(each.value), len(each.changes))))
 
 

@@ -162,8 +162,7 @@ def _fractions(printed: str, value: Exact, slack: Fraction) -> list[str]:
     exact = value.rational
     if slack:
         exact = exact.limit_denominator(LARGEST_SMALL_DENOMINATOR)
-        if abs(exact - value.rational) > slack:
-            return []
+        return [str(exact)] if abs(exact - value.rational) <= slack else []
     found = [str(exact)]
     above, below = exact.numerator, exact.denominator
     printed_above, _, printed_below = printed.removeprefix("-").partition("/")
