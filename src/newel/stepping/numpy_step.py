@@ -66,6 +66,34 @@ def coefficient_array(rows: list[list[Exact]], dtype: np.dtype[Any]) -> Array:
     return np.array([[float(entry) for entry in row] for row in rows], dtype=dtype)
 
 
+_Nodes = tuple[Any, ...]
+_TABLES: dict[tuple[str, str, bool], tuple[Array, _Nodes]] = {}
+_MOST_TABLES = 64
+
+
+def _table(tableau: Tableau, dtype: np.dtype[Any], estimate: bool) -> tuple[Array, _Nodes]:
+    """Return rows of matrix, weights and, where wanted, weights less embedded weights, and the nodes.
+
+    The last few are remembered by digest: turning exact numbers into floats takes longer than a step.
+    """
+    key = tableau.digest, dtype.char, estimate
+    found = _TABLES.get(key)
+    if found is not None:
+        return found
+    rows = [list(row) for row in tableau.matrix] + [list(tableau.weights)]
+    if estimate:
+        embedded = tableau.embedded_weights
+        assert embedded is not None, "the march asks for an estimate only of a pair"
+        rows.append([w - e for w, e in zip(tableau.weights, embedded, strict=True)])
+    # Columns first, so that all but the first column of the work matrix is one run of memory.
+    base = np.asfortranarray(coefficient_array(rows, dtype))
+    kind: Any = (lambda c: Fraction(c.rational)) if dtype == np.dtype(object) else float
+    if len(_TABLES) >= _MOST_TABLES:
+        _TABLES.clear()
+    _TABLES[key] = base, tuple(kind(c) for c in tableau.nodes)
+    return _TABLES[key]
+
+
 class NumpyStep:
     """Makes steps of one tableau for one state.
 
@@ -104,7 +132,10 @@ class NumpyStep:
         self.compensated = compensated and dtype != np.dtype(object)
         self.sizes_known = self.sizes_made = False
         self.floor: Any = None
-        self._coefficients(tableau, estimate)
+        self.base, self.nodes = _table(tableau, dtype, estimate)
+        self.work = np.ones((len(self.base), s + 1), dtype=dtype, order="F")
+        self.scaled = self.work[:, 1:]
+        self.step_of_work: Any = None
 
         self.slab = np.zeros((s + 1, size), dtype=dtype)
         self.stage, self.new_flat = np.zeros(size, dtype=dtype), np.zeros(size, dtype=dtype)
@@ -113,24 +144,6 @@ class NumpyStep:
         self.rows = [self.slab[i].reshape(shape) for i in range(s + 1)]
         self._views(size, dtype)
         self.load(state)
-
-    def _coefficients(self, tableau: Tableau, estimate: bool) -> None:
-        s, dtype = self.stages, self.dtype
-        rows = [list(row) for row in tableau.matrix] + [list(tableau.weights)]
-        if estimate:
-            embedded = tableau.embedded_weights
-            assert embedded is not None, "the march asks for an estimate only of a pair"
-            rows.append([w - e for w, e in zip(tableau.weights, embedded, strict=True)])
-        self.base = coefficient_array(rows, dtype)
-        # Columns first, so that all but the first column is one run of memory, scaled in one go.
-        self.base = np.asfortranarray(self.base)
-        self.work = np.ones((len(rows), s + 1), dtype=dtype, order="F")
-        self.scaled = self.work[:, 1:]
-        self.step_of_work: Any = None
-        if dtype == np.dtype(object):
-            self.nodes: list[Any] = [Fraction(c.rational) for c in tableau.nodes]
-        else:
-            self.nodes = [float(c) for c in tableau.nodes]
 
     def _views(self, size: int, dtype: np.dtype[Any]) -> None:
         """Make every view and buffer that the step loop uses."""
