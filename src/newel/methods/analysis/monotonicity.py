@@ -57,8 +57,13 @@ def linear_threshold(tableau: Tableau) -> float:
 
 
 def _largest(holds: Callable[[int], bool], most: int) -> float:
-    """Return the largest r, up to a whole number of units, for which something holds that holds below it."""
+    """Return the largest r for which something holds that holds below it; `most` is a first guess of a bound.
+
+    A consistent method never passes the number of its stages; one that is not may, and is let go at 2⁴⁰.
+    """
     low, high = 0, most << _BITS
+    while holds(high) and high < 1 << (_BITS + 40):
+        high *= 2
     for _ in range(_STEPS):
         middle = (low + high) >> 1
         low, high = (middle, high) if holds(middle) else (low, middle)
