@@ -9,7 +9,7 @@ import attrs
 import pytest
 
 import newel
-from newel.catalogue.identify import compared, identities, identify
+from newel.catalogue.identify import compared, identify, identities
 from newel.catalogue.registry import Registry
 from newel.methods.tableau import Tableau
 

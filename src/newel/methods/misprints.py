@@ -26,6 +26,9 @@ if TYPE_CHECKING:
 
 __all__ = ["Search", "changed", "find_repairs", "repaired", "singles"]
 
+MOST_DOUBTFUL = 2
+"""So many rows are looked at where no sum is beyond its rounding."""
+
 
 @attrs.frozen
 class Search:
@@ -69,15 +72,21 @@ def find_repairs(tableau: Tableau) -> Search:
 
 
 def ranked(repairs: list[Repair]) -> tuple[Repair, ...]:
-    """Return repairs by distance, then by the length of what is to be written; the same change once."""
-    once = {each.changes: each for each in reversed(repairs)}
+    """Return repairs by distance, then by the length of what is to be written; one for each place."""
+    once: dict[str, Repair] = {}
+    for each in repairs:
+        kept = once.setdefault(each.where, each)
+        if each.distance < kept.distance:
+            once[each.where] = each
     return tuple(sorted(once.values(), key=lambda each: (each.distance, len(each.value), len(each.changes))))
 
 
 def singles(bench: Bench) -> tuple[list[Repair], list[str]]:
     """Return every change of one coefficient that does it, and what could not be decided."""
-    proposals = list(chain(_in_sums(bench), _in_rows(bench)))
+    proposals = list(chain(_in_sums(bench), _in_rows(bench), _in_ends(bench)))
     found = [repair for each in proposals if (repair := bench.tried([each])) is not None]
+    if bench.rounded and not found and not bench.row_defects:
+        found = [repair for each in _in_doubtful_rows(bench) if (repair := bench.tried([each])) is not None]
     undecided: list[str] = []
     if not bench.nodes_printed and bench.sum_defect("weights") is None:
         more, undecided = single_along_lines(bench)
@@ -99,6 +108,26 @@ def _in_rows(bench: Bench) -> Iterator[Proposal | None]:
     for j in range(i):
         yield bench.added(Place("matrix", i, j), lack, slack)
     yield Proposal(Place("nodes", i), bench.row_totals[i], slack)
+
+
+def _in_doubtful_rows(bench: Bench) -> Iterator[Proposal | None]:
+    """Add what the least exact rows lack: a slip in a late digit may be excused in the sum, not in a tree."""
+    if not bench.nodes_printed:
+        return
+    lacks = [node - total for node, total in zip(bench.tableau.nodes, bench.row_totals, strict=True)]
+    doubtful = sorted(range(len(lacks)), key=lambda i: abs(lacks[i]), reverse=True)
+    for i in doubtful[:MOST_DOUBTFUL]:
+        slack = bench.half["nodes"][i] + sum(bench.half["matrix"][i])
+        if lacks[i]:
+            yield from (bench.added(Place("matrix", i, j), lacks[i], slack) for j in range(i))
+
+
+def _in_ends(bench: Bench) -> Iterator[Proposal | None]:
+    """Let continuous weights end in the weight of their stage: by one of them, or by the weight."""
+    for i, lack, slack in bench.end_defects():
+        powers = range(len((bench.tableau.continuous_weights or ((),))[0]))
+        yield from (bench.added(Place("continuous", i, power), lack, slack) for power in powers)
+        yield bench.added(Place("weights", i), -lack, slack)
 
 
 def _in_sums(bench: Bench) -> Iterator[Proposal | None]:
