@@ -70,7 +70,7 @@ def test_runge_kutta_is_the_name_of_all_and_finds_no_namesake_alone():
 
 
 @pytest.mark.parametrize(
-    ("by", "first"), [("year", "euler-1"), ("slug", "berland-bogey-bailly-4"), ("stages", "euler-1")]
+    ("by", "first"), [("year", "euler-1"), ("slug", "allampalli-hixon-4-stages-6"), ("stages", "euler-1")]
 )
 def test_sort_decides_which_comes_first(by, first):
     assert rows(say("list", "--sort", by))[0] == first
@@ -99,7 +99,7 @@ def test_json_is_one_document_with_all_fields():
         13,
         "rounded",
     )
-    assert data["families"] == ["doubled-{method}"]
+    assert {"doubled-{method}", "chebyshev-2-stages-{stages}"} < set(data["families"])
 
 
 def test_a_folder_of_ones_own_is_listed_with_its_place(tmp_path):

@@ -18,7 +18,7 @@ import pluggy
 if TYPE_CHECKING:
     from newel.methods.tableau import Tableau
 
-__all__ = ["newel_controllers", "newel_sinks", "newel_tableaux", "tableau_files"]
+__all__ = ["FAMILY_SAMPLES", "newel_controllers", "newel_sinks", "newel_tableaux", "tableau_files"]
 
 PACKAGE = "newel.tableaux"
 
@@ -32,6 +32,14 @@ _FAMILIES = {
     "extrapolated-midpoint-romberg-{order}": f"{_RULES}.extrapolation:extrapolated_midpoint_romberg",
     "extrapolated-midpoint-bulirsch-{order}": f"{_RULES}.extrapolation:extrapolated_midpoint_bulirsch",
     "extrapolated-midpoint-smoothed-{order}": f"{_RULES}.extrapolation:extrapolated_midpoint_smoothed",
+    "richardson-{levels}-{method}": f"{_RULES}.composition:richardson",
+    "repeated-{times}-{method}": f"{_RULES}.composition:repeated",
+    "picard-gauss-{order}": f"{_RULES}.collocation:picard_gauss",
+    "picard-radau-{order}": f"{_RULES}.collocation:picard_radau",
+    "picard-lobatto-{order}": f"{_RULES}.collocation:picard_lobatto",
+    "picard-equidistant-{order}": f"{_RULES}.collocation:picard_equidistant",
+    "deferred-correction-lobatto-{order}": f"{_RULES}.collocation:deferred_correction_lobatto",
+    "deferred-correction-equidistant-{order}": f"{_RULES}.collocation:deferred_correction_equidistant",
     "chebyshev-1-stages-{stages}": f"{_RULES}.recursions:chebyshev_1",
     "chebyshev-2-stages-{stages}": f"{_RULES}.recursions:chebyshev_2",
     "legendre-1-stages-{stages}": f"{_RULES}.recursions:legendre_1",
@@ -39,6 +47,24 @@ _FAMILIES = {
     "ssp-2-stages-{stages}": f"{_RULES}.shocks:ssp_2",
     "ssp-3-stages-{stages}": f"{_RULES}.shocks:ssp_3",
 }
+
+FAMILY_SAMPLES = (
+    *("doubled-kutta-4", "doubled-carpenter-kennedy-4"),
+    *("extrapolated-euler-3", "extrapolated-euler-6", "extrapolated-euler-romberg-5"),
+    *("extrapolated-euler-bulirsch-6", "extrapolated-midpoint-4", "extrapolated-midpoint-8"),
+    *("extrapolated-midpoint-12", "extrapolated-midpoint-romberg-6", "extrapolated-midpoint-bulirsch-8"),
+    *("extrapolated-midpoint-smoothed-4", "extrapolated-midpoint-smoothed-8"),
+    *("richardson-3-kutta-4", "richardson-2-ssp-3-stages-5", "repeated-2-bogacki-shampine-3-2"),
+    *("repeated-3-kutta-4", "picard-gauss-4", "picard-gauss-6", "picard-gauss-8"),
+    *("picard-radau-3", "picard-radau-5", "picard-radau-7", "picard-lobatto-4", "picard-lobatto-7"),
+    *("picard-equidistant-3", "picard-equidistant-6"),
+    *("deferred-correction-lobatto-4", "deferred-correction-lobatto-7"),
+    *("deferred-correction-equidistant-3", "deferred-correction-equidistant-6"),
+    *("chebyshev-1-stages-5", "chebyshev-1-stages-20", "chebyshev-2-stages-5", "chebyshev-2-stages-20"),
+    *("legendre-1-stages-5", "legendre-1-stages-20", "legendre-2-stages-5", "legendre-2-stages-20"),
+    *("ssp-2-stages-5", "ssp-2-stages-20", "ssp-3-stages-16", "ssp-3-stages-25"),
+)
+"""Members of the families at several sizes each, which `newel check --all` proves with all single methods."""
 
 _CONTROLLERS = (
     "elementary",

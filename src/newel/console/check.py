@@ -45,7 +45,7 @@ class _Checked:
 def add(parser: ArgumentParser) -> None:
     """Add the methods."""
     parser.add_argument("methods", nargs="*", metavar="METHOD", help="a slug, or a file that ends in .toml")
-    parser.add_argument("--all", action="store_true", help="every method that is known")
+    parser.add_argument("--all", action="store_true", help="every known method, and some of each family")
     parser.add_argument("--anew", action="store_true", help="prove even what was proved here before")
     parser.add_argument("--write", action="store_true", help="write the nearest repair into the file")
 
@@ -110,7 +110,10 @@ def _check_each(registry: Registry, options: Namespace, screen: Screen) -> list[
 
 
 def _check_all(registry: Registry, options: Namespace, screen: Screen) -> list[_Checked]:
-    slugs, found = registry.names(), []
+    from newel.catalogue.shipped import FAMILY_SAMPLES
+
+    slugs = [*registry.names(), *(slug for slug in FAMILY_SAMPLES if slug not in registry.names())]
+    found = []
     with proof_progress(screen, "proving all methods") as progress:
         for number, slug in enumerate(slugs, 1):
             each = _check(slug, registry, options.anew, None)

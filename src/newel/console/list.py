@@ -97,7 +97,9 @@ def draw(screen: Screen, found: Sequence[Summary], known: int, families: Sequenc
     of = "" if len(found) == known else f" of {known}"
     screen.write(f"{count}{of}.  In full: newel inspect SLUG")
     if len(found) == known and families:
-        screen.write(f"Families: {', '.join(families)}")
+        from newel.console.words import filled
+
+        screen.write(filled(", ".join(families), screen.console.width, "Families: ", "  "))
 
 
 def _table(found: Sequence[Summary], with_names: bool) -> Table:

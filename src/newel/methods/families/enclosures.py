@@ -21,6 +21,7 @@ DIGITS = 40
 """Significant digits that a rounded member of a family states."""
 
 PLACES = 240
+ROOT_PLACES = 90
 PRINTED = 44
 SCALE = 10**PLACES
 EnclosureLike: TypeAlias = "Enclosure | Fraction | int"
@@ -117,12 +118,13 @@ def root_between(function: Callable[[Fraction], Fraction], low: Fraction, high: 
     >>> root_between(lambda x: x * x - 2, Fraction(1), Fraction(2)).holds(Fraction(141421356, 10**8))
     False
     """
-    below, above = int(low * SCALE), int(high * SCALE)
-    sign = function(Fraction(below, SCALE)) > 0
+    grid = 10**ROOT_PLACES
+    below, above = int(low * grid), int(high * grid)
+    sign = function(Fraction(below, grid)) > 0
     while above - below > 1:
         middle = (below + above) // 2
-        if (function(Fraction(middle, SCALE)) > 0) == sign:
+        if (function(Fraction(middle, grid)) > 0) == sign:
             below = middle
         else:
             above = middle
-    return Enclosure(below, above)
+    return Enclosure(below * SCALE // grid, above * SCALE // grid)
