@@ -27,6 +27,11 @@ SLUGS = REGISTRY.names()
 SLACK = 0.25
 
 
+# Conditions beyond the claim fail by so little (E. B. Shanks, Math. Comp. 20 (1966) 21-38, has near misses)
+# that the steps which rounding leaves clear show a higher order.
+NEARLY_HIGHER = ("shanks-five-evaluations-4",)
+
+
 @cache
 def tableau(slug: str) -> Any:
     return REGISTRY.find(slug)
@@ -73,7 +78,9 @@ def test_solutions_are_continuous_at_their_breaks() -> None:
 
 @pytest.mark.parametrize("slug", SLUGS)
 def test_measured_order_is_the_claimed_order(slug: str) -> None:
-    assert abs(slope(WARPED, tableau(slug)) - tableau(slug).order) < SLACK
+    found = slope(WARPED, tableau(slug)) - tableau(slug).order
+    assert found > -SLACK
+    assert found < SLACK or slug in NEARLY_HIGHER
 
 
 @pytest.mark.parametrize("slug", SLUGS)
