@@ -9,7 +9,7 @@ import attrs
 
 from newel.catalogue.identify import Identity, identities
 from newel.catalogue.registry import Registry, default_registry
-from newel.errors import BadRequest
+from newel.errors import BadRequest, NotRecovered
 
 if TYPE_CHECKING:
     from newel.methods.misprints import Search
@@ -22,6 +22,22 @@ __all__ = ["Recovered", "recover"]
 
 TRUSTED_DIGITS = 15
 """Of a coefficient that is no short fraction; a float64 has between 15 and 17."""
+
+_WRITE = "Write it as step(rate, t, y, h) that calls rate(t, y) and returns the new state."
+_NO_METHOD = "It is no explicit Runge–Kutta step, and no tableau says what it does."
+_ADVICE = {
+    "memory": f"{_NO_METHOD} Multistep methods are none; give a fresh function if it counts or keeps.",
+    "branch": f"{_NO_METHOD} Take out what looks at the data: limits belong to the model.",
+    "overwritten": f"{_NO_METHOD} Copy y before it is changed: y = y.copy().",
+    "raises": "Try it on a state of zeros; length=2 tells the length of the state that it needs, 0 a number.",
+    "never calls": _WRITE,
+    "calls": _WRITE,
+    "signature": _WRITE,
+    "shape": "Give the length of the state that it works on: length=2, or 0 for a plain number.",
+    "no state": _WRITE,
+    "not finite": "Its coefficients must be finite.",
+}
+"""By reason, what to do."""
 
 _MOST_STAGES = 9
 """Up to so many stages a coefficient that is wrong together with its node is looked for."""
@@ -113,8 +129,12 @@ def recover(
     if order is not None and (isinstance(order, bool) or not 1 <= order <= 16):
         raise BadRequest(f"order={order!r} is not between 1 and 16", argument="order")
     where = default_registry() if registry is None else registry
-    reading = read_step(step_function, length)
-    tableau, remarks = _tableau(reading, str(getattr(step_function, "__name__", "step")))
+    name = str(getattr(step_function, "__name__", type(step_function).__name__))
+    try:
+        reading = read_step(step_function, length)
+    except NotRecovered as error:
+        raise NotRecovered(f"{name}: {error}\n  {_ADVICE[error.reason]}", reason=error.reason) from error
+    tableau, remarks = _tableau(reading, name)
     tableau, verdict, search = _judged(tableau, order)
     found = identities(tableau, where)
     if verdict and not found and order is None:
