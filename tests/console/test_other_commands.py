@@ -80,7 +80,7 @@ def test_a_guide_is_drawn_on_a_terminal():
 def test_a_guide_that_is_not_there_is_answered_with_the_nearest():
     said = say("guide", "march-a-modell")
     assert said.status == 2
-    assert said.err.startswith("unknown guide 'march-a-modell'\n  Near names: march-a-model.")
+    assert said.err.startswith("unknown guide 'march-a-modell'\n  Near names: march-a-model")
 
 
 @pytest.mark.parametrize(

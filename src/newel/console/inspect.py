@@ -103,9 +103,7 @@ def draw_table(screen: Screen, found: Sequence[Inspection]) -> None:
         for row, cells in zip(rows, shown, strict=True):
             if any(x is not None for x in row.values):
                 screen.write(f"  {row.title:<{_TITLES - 2}}" + "".join(cells[k] for k in here).rstrip())
-    screen.write(
-        "\n* the best of its row. What is a call is divided by the rate calls of a step: equal cost."
-    )
+    screen.write("\n* best of its row.  A call: divided by the rate calls of a step (equal cost).")
     screen.write("In full: newel inspect SLUG")
 
 
