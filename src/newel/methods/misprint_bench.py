@@ -95,10 +95,14 @@ class Bench:
 
     def sum_defect(self, array: str, column: int = 0) -> tuple[Exact, Fraction] | None:
         """Return what the weights lack to their sum, and how well that is known; None where they have it."""
+        missing, slack = self.lack_of_sum(array, column)
+        return (missing, slack) if _beyond(missing, slack) else None
+
+    def lack_of_sum(self, array: str, column: int = 0) -> tuple[Exact, Fraction]:
+        """Return what the weights lack to their sum, and how well that is known."""
         values, half = self._line(array, column)
         wanted = 1 if array != "continuous" or column == 0 else 0
-        missing, slack = wanted - sum((x for x in values if x), Exact(0)), sum(half, Fraction(0))
-        return (missing, slack) if _beyond(missing, slack) else None
+        return wanted - sum((x for x in values if x), Exact(0)), sum(half, Fraction(0))
 
     def end_defects(self) -> Iterator[tuple[int, Exact, Fraction]]:
         """Yield each stage whose continuous weights do not end in its weight: stage, lack, slack."""
@@ -124,6 +128,13 @@ class Bench:
         """Return half a unit of what stands in a place."""
         found: Fraction = _at(self.half[place.array], place)
         return found
+
+    def unit(self, place: Place, value: Exact) -> Fraction:
+        """Return half a unit of the last digit that is trusted in a place, were this value to stand there."""
+        digits = stated(self.tableau, place)
+        if digits is None or not value:
+            return Fraction(0)
+        return Fraction(10) ** (decimal_exponent(value) - digits + 1) / 2
 
     def added(self, place: Place, lack: Exact, slack: Fraction) -> Proposal | None:
         """Return the proposal that adds what a sum lacks to one entry; `slack` is that of the whole sum."""

@@ -10,6 +10,7 @@ size of the change. Only where no single change does it are several tried togeth
 from __future__ import annotations
 
 from collections.abc import Iterator
+from fractions import Fraction
 from itertools import chain
 from typing import TYPE_CHECKING
 
@@ -83,10 +84,10 @@ def ranked(repairs: list[Repair]) -> tuple[Repair, ...]:
 
 def singles(bench: Bench) -> tuple[list[Repair], list[str]]:
     """Return every change of one coefficient that does it, and what could not be decided."""
-    proposals = list(chain(_in_sums(bench), _in_rows(bench), _in_ends(bench)))
+    proposals = list(chain(_in_sums(bench), _in_rows(bench), _in_ends(bench), _in_storage(bench)))
     found = [repair for each in proposals if (repair := bench.tried([each])) is not None]
     if bench.rounded and not found and not bench.row_defects:
-        found = [repair for each in _in_doubtful_rows(bench) if (repair := bench.tried([each])) is not None]
+        found = [repair for each in _in_doubtful_sums(bench) if (repair := bench.tried([each])) is not None]
     undecided: list[str] = []
     if not bench.nodes_printed and bench.sum_defect("weights") is None:
         more, undecided = single_along_lines(bench)
@@ -110,8 +111,12 @@ def _in_rows(bench: Bench) -> Iterator[Proposal | None]:
     yield Proposal(Place("nodes", i), bench.row_totals[i], slack)
 
 
-def _in_doubtful_rows(bench: Bench) -> Iterator[Proposal | None]:
-    """Add what the least exact rows lack: a slip in a late digit may be excused in the sum, not in a tree."""
+def _in_doubtful_sums(bench: Bench) -> Iterator[Proposal | None]:
+    """Add what the least exact sums lack: a slip in a late digit may be excused in a sum, not in a tree."""
+    for array in ("weights", "embedded"):
+        if array == "weights" or bench.tableau.embedded_weights is not None:
+            lack, slack = bench.lack_of_sum(array)
+            yield from (bench.added(Place(array, j), lack, slack) for j in range(bench.tableau.stages))
     if not bench.nodes_printed:
         return
     lacks = [node - total for node, total in zip(bench.tableau.nodes, bench.row_totals, strict=True)]
@@ -120,6 +125,22 @@ def _in_doubtful_rows(bench: Bench) -> Iterator[Proposal | None]:
         slack = bench.half["nodes"][i] + sum(bench.half["matrix"][i])
         if lacks[i]:
             yield from (bench.added(Place("matrix", i, j), lacks[i], slack) for j in range(i))
+
+
+def _in_storage(bench: Bench) -> Iterator[Proposal]:
+    """Take from the storage form, which is evidence of its own, what stands in the failing places."""
+    storage = bench.tableau.storage
+    if storage is None:
+        return
+    matrix, weights = storage.butcher()
+    places = {Place("weights", j): value for j, value in enumerate(weights)}
+    places |= {
+        Place("matrix", i, j): value for i, row in enumerate(matrix) for j, value in enumerate(row[:i])
+    }
+    for place, value in places.items():
+        slack = bench.unit(place, value) if bench.rounded else Fraction(0)
+        if abs(bench.entry(place) - value) > 1000 * slack:
+            yield Proposal(place, value, slack)
 
 
 def _in_ends(bench: Bench) -> Iterator[Proposal | None]:
