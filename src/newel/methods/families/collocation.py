@@ -252,7 +252,7 @@ def picard_radau(order: int) -> Tableau:
 
 def picard_lobatto(order: int) -> Tableau:
     """Return `picard-lobatto-<order>`: on the fewest Lobatto nodes; see `picard_gauss`."""
-    return picard(lobatto_nodes(_bounded(order + 3) // 2), order, f"picard-lobatto-{order}")
+    return picard(lobatto_nodes(max(2, _bounded(order + 3) // 2)), order, f"picard-lobatto-{order}")
 
 
 def picard_equidistant(order: int) -> Tableau:
@@ -266,7 +266,7 @@ def deferred_correction_lobatto(order: int) -> Tableau:
     >>> deferred_correction_lobatto(6)
     <Tableau deferred-correction-lobatto-6: order 6(5), 18 stages>
     """
-    nodes = lobatto_nodes(_bounded(order + 3) // 2)
+    nodes = lobatto_nodes(max(2, _bounded(order + 3) // 2))
     return deferred_correction(nodes, order, f"deferred-correction-lobatto-{order}")
 
 
