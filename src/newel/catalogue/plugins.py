@@ -50,7 +50,10 @@ hookspec = pluggy.HookspecMarker(GROUP)
 
 
 class Specifications:
-    """The three hooks. A plugin marks its functions with `pluggy.HookimplMarker("newel")`."""
+    """The three hooks. A plugin marks its functions with `pluggy.HookimplMarker("newel")`.
+
+    These bodies are never run: pluggy reads names and arguments off them.
+    """
 
     @hookspec
     def newel_tableaux(self) -> Mapping[str, Loader]:
@@ -59,17 +62,17 @@ class Specifications:
         A slug with a word in braces, as in `"extrapolated-midpoint-{order}"`, is a family: its loader gets
         what stands in the place of each word, in that order: a whole number, or for `{method}` a Tableau.
         """
-        raise NotImplementedError
+        return {}
 
     @hookspec
     def newel_controllers(self) -> Mapping[str, Loader]:
         """Return names with loaders; what is loaded, called with keyword arguments, returns a Controller."""
-        raise NotImplementedError
+        return {}
 
     @hookspec
     def newel_sinks(self) -> Mapping[str, Loader]:
         """Return names with loaders; what is loaded makes a Sink, and its `endings` name file endings."""
-        raise NotImplementedError
+        return {}
 
 
 @attrs.frozen

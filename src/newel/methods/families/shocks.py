@@ -10,10 +10,12 @@ D. I. Ketcheson, SIAM J. Sci. Comput. 30 (2008) 2113-2136, for order 3 with n² 
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from fractions import Fraction
 from math import isqrt
 
 from newel.errors import BadRequest
+from newel.methods.exact import ExactLike
 from newel.methods.storage import Storage
 from newel.methods.tableau import Notes, Tableau
 
@@ -100,15 +102,21 @@ def _square_form(n: int) -> tuple[list[list[Fraction]], list[list[Fraction]]]:
 
 
 def _made(
-    slug: str, order: int, matrix: object, weights: object, storage: Storage, coefficient: int, source: str
+    slug: str,
+    order: int,
+    matrix: Iterable[Iterable[ExactLike]],
+    weights: Iterable[ExactLike],
+    storage: Storage,
+    coefficient: int,
+    source: str,
 ) -> Tableau:
     stages = slug.rsplit("-", 1)[1]
     return Tableau(
         slug,
         name=f"SSP of order {order} with {stages} stages",
         order=order,
-        matrix=matrix,  # type: ignore[arg-type]  # rows of Fractions or of Exacts
-        weights=weights,  # type: ignore[arg-type]
+        matrix=matrix,
+        weights=weights,
         storage=storage,
         source=source,
         numbers="derived: from the published closed form",
