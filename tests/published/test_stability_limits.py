@@ -22,6 +22,7 @@ from math import factorial, sqrt
 import numpy as np
 import pytest
 
+from newel.catalogue.registry import default_registry
 from newel.catalogue.shipped import tableau_files
 from newel.methods.analysis.stability import growth_polynomial
 from newel.methods.analysis.stability_limits import imaginary_limit, real_limit
@@ -103,6 +104,42 @@ def test_the_exponential_series_has_the_limits_of_independent_code(
     t = chain(*(f"1/{factorial(k)}" for k in range(2, order + 1)), order=order)
     assert real_limit(t) == pytest.approx(real, rel=1e-12)
     assert imaginary_limit(t) == pytest.approx(imaginary, rel=1e-12, abs=0.0)
+
+
+CHEBYSHEV = [
+    (1, 2, 4 * 1.9400476),
+    (1, 5, 25 * 1.9365619),
+    (1, 10, 100 * 1.9360627),
+    (2, 10, 64.6884016104),
+    (2, 3, 5.23040391107),
+    (2, 5, 15.6847661766),
+]
+
+
+@pytest.mark.parametrize(("order", "stages", "damped"), CHEBYSHEV)
+def test_damped_chebyshev_methods_reach_as_far_as_their_formula_says(
+    order: int, stages: int, damped: float
+) -> None:
+    """The usual figure is where the argument w₀ + w₁z is −1; |R| = 1 again at −w₀, or later.
+
+    The figures, for the dampings 0.05 and 2/13, were recomputed by independent code.
+    """
+    w = 1 + (0.05, 2 / 13)[order - 1] / stages**2
+    found = real_limit(default_registry().load(f"chebyshev-{order}-stages-{stages}"))
+    assert found is not None
+    if order == 1 or stages % 2 == 0:
+        assert found == pytest.approx(damped * 2 * w / (w + 1), rel=1e-7)
+    else:
+        assert damped < found < 1.2 * damped
+
+
+def test_fifty_stages_keep_their_smallest_coefficients() -> None:
+    """The closed form of order 2, 2w₀·T″_s(w₀)/T′_s(w₀), by numpy's derivatives of T_s."""
+    s = 50
+    polynomial = np.polynomial.Chebyshev.basis(s)
+    w = 1 + (2 / 13) / s**2
+    wanted = 2 * w * polynomial.deriv(2)(w) / polynomial.deriv(1)(w)
+    assert real_limit(default_registry().load("chebyshev-2-stages-50")) == pytest.approx(wanted, rel=1e-9)
 
 
 @pytest.mark.parametrize("slug", sorted(tableau_files()))

@@ -13,7 +13,7 @@ __all__ = ["linear_threshold", "ssp_coefficient"]
 _BITS = 384
 _ONE = 1 << _BITS
 _SLACK = 1 << (_BITS - 250)
-_STEPS = 72
+_STEPS = 84
 
 
 def ssp_coefficient(tableau: Tableau) -> float:
@@ -50,14 +50,16 @@ def linear_threshold(tableau: Tableau) -> float:
     1.0
     """
     r = growth_polynomial(tableau) or ()
-    p = [x.scaled_floor(_BITS) for x in r]
+    # In units of s², which no radius passes, the coefficients of long polynomials keep their bits.
+    unit = tableau.stages**2
+    p = [(x * unit**k).scaled_floor(_BITS) for k, x in enumerate(r)]
     if len(p) < 2 or any(x <= 0 for x in p):
         return 0.0
-    return _largest(lambda radius: _derivatives_hold(p, radius), len(p))
+    return _largest(lambda radius: _derivatives_hold(p, radius), 1, unit)
 
 
-def _largest(holds: Callable[[int], bool], most: int) -> float:
-    """Return the largest r for which something holds that holds below it; `most` is a first guess of a bound.
+def _largest(holds: Callable[[int], bool], most: int, unit: int = 1) -> float:
+    """Return the largest r, in a unit, for which something holds as it does below; `most` is a first guess.
 
     A consistent method never passes the number of its stages; one that is not may, and is let go at 2⁴⁰.
     """
@@ -67,7 +69,7 @@ def _largest(holds: Callable[[int], bool], most: int) -> float:
     for _ in range(_STEPS):
         middle = (low + high) >> 1
         low, high = (middle, high) if holds(middle) else (low, middle)
-    found = float(Fraction(low + high, 2 << _BITS))
+    found = float(Fraction((low + high) * unit, 2 << _BITS))
     return 0.0 if found < 1e-15 else found
 
 

@@ -52,8 +52,8 @@ def growth_polynomial(tableau: Tableau, embedded: bool = False) -> tuple[Exact, 
 
     Rounded coefficients meet r_k = 1/k! up to the order p only to their digits, and a limit would hang on the
     last of them: up to the claimed order 1/k! itself is taken where it is met to 9 digits, beyond it r_k to
-    256 bits. Exact methods are left as they are, but for those that mix two square roots, which are computed
-    to 512 bits in the same way.
+    256 + 16k bits. Exact methods are left as they are, but for those that mix two square roots, which are
+    computed to 512 bits in the same way.
 
     Args:
         tableau: the method.
@@ -84,7 +84,9 @@ def _meant(r: Exact, k: int, order: int) -> Exact:
     series = Fraction(1, factorial(k))
     if k <= order and abs(r - series) < _CLOSE * series:
         return Exact(series)
-    return Exact(Fraction(r.scaled_floor(_KEPT), 1 << _KEPT))
+    # Long polynomials have coefficients down to (2s²)^−k: they need their bits behind those zeros.
+    bits = _KEPT + 16 * k
+    return Exact(Fraction(r.scaled_floor(bits), 1 << bits))
 
 
 def _fixed_point(matrix: Sequence[Row], weights: Row) -> list[Exact]:
