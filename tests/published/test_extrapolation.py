@@ -39,7 +39,7 @@ def test_gragg_with_two_sub_steps_and_no_smoothing_is_the_midpoint_rule() -> Non
     ("steps", "shares"),
     [
         # Lagrange's factors at 0 in h²: −1/3 and 4/3 for 2 and 4 sub-steps; 1/24, −16/15 and 81/40 for 2, 4
-        # and 6, the shares of trapezoidal sums with 1, 2 and 3 intervals (L. F. Richardson 1927); from memory.
+        # and 6, the shares of trapezoidal sums with 1, 2 and 3 intervals (Richardson, 1927); from memory.
         ((2, 4), ("-1/3", "4/3")),
         ((2, 4, 6), ("1/24", "-16/15", "81/40")),
     ],
