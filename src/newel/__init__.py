@@ -30,6 +30,7 @@ if TYPE_CHECKING:
     from newel.marching.march import march as march
     from newel.marching.one_step import one_step as one_step
     from newel.marching.stepper import Stepper as Stepper
+    from newel.methods.drafting import draft as draft
     from newel.methods.tableau import Notes as Notes
     from newel.methods.tableau import Tableau as Tableau
     from newel.methods.tableau_file import write_tableau as write_tableau
@@ -65,6 +66,7 @@ _WHERE = {
     "Stepper": "newel.marching.stepper",
     "Tableau": "newel.methods.tableau",
     "check": "newel.catalogue.checking",
+    "draft": "newel.methods.drafting",
     "examine": "newel.models.examine",
     "export": "newel.catalogue.taking_away",
     "find": "newel.catalogue.access",

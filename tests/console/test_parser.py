@@ -18,7 +18,19 @@ FUNCTIONS = {"list": "names"}
 
 
 def test_each_subcommand_calls_one_public_function():
-    assert SUBCOMMANDS == ("list", "inspect", "check", "recover", "identify", "march", "examine", "plugins", "guide")
+    assert SUBCOMMANDS == (
+        "list",
+        "inspect",
+        "check",
+        "recover",
+        "identify",
+        "draft",
+        "export",
+        "march",
+        "examine",
+        "plugins",
+        "guide",
+    )
     assert set(build()[1]) == set(SUBCOMMANDS)
     for name in SUBCOMMANDS:
         function = FUNCTIONS.get(name, name)
@@ -57,6 +69,8 @@ def test_every_subcommand_has_a_json_twin_with_a_schema(name, tmp_path):
         "check": ["kutta-4"],
         "recover": ["newel.examples:midpoint_step"],
         "identify": ["kutta-4"],
+        "draft": ["mine.toml", "--stages", "2"],
+        "export": ["kutta-4", "--as", "c"],
         "march": ["decay.py", "--method", "kutta-4", "--step", "0.5"],
         "examine": ["decay.py"],
     }

@@ -18,7 +18,19 @@ if TYPE_CHECKING:
 
 __all__ = ["SUBCOMMANDS", "Parser", "add_common", "build", "parse"]
 
-SUBCOMMANDS = ("list", "inspect", "check", "recover", "identify", "march", "examine", "plugins", "guide")
+SUBCOMMANDS = (
+    "list",
+    "inspect",
+    "check",
+    "recover",
+    "identify",
+    "draft",
+    "export",
+    "march",
+    "examine",
+    "plugins",
+    "guide",
+)
 """Each stands in a module of the same name, with `add(parser)` and `run(options, screen) -> int`."""
 
 _MARCH = "newel march example:lock --method dormand-prince-5-4 --rel-tol 1e-6 --abs-tol 1e-9"

@@ -7,7 +7,6 @@ from __future__ import annotations
 
 import os
 import re
-import secrets
 import stat
 from collections.abc import Mapping
 from difflib import get_close_matches
@@ -15,13 +14,23 @@ from math import isfinite
 from pathlib import Path
 from typing import Any
 
-from newel.errors import BadTableau, OutputExists, OutputFailed
+from newel.errors import BadTableau, OutputFailed
 from newel.methods.digits import shown
 from newel.methods.storage import ARRAYS_OF, FORMS, Storage
 from newel.methods.tableau import Notes, Tableau
 from newel.methods.tableau_text import NOTE_KEYS, SCHEMA, format_tableau, quoted
+from newel.methods.text_file import write_text
 
-__all__ = ["MOST_BYTES", "SCHEMA", "format_tableau", "load_tableau", "parse_tableau", "write_tableau"]
+__all__ = [
+    "MOST_BYTES",
+    "SCHEMA",
+    "format_tableau",
+    "load_tableau",
+    "parse_tableau",
+    "read_document",
+    "tableau_of",
+    "write_tableau",
+]
 
 MOST_BYTES = 2 * 1024 * 1024
 
@@ -145,7 +154,27 @@ def parse_tableau(text: str, file: str = "tableau") -> Tableau:
     newel.errors.BadTableau: mine.toml: schema: 'newel-tableau/2'; this newel reads "newel-tableau/1"
     """
     try:
-        data = _toml(text)
+        return tableau_of(_toml(text), file)
+    except BadTableau as error:
+        raise BadTableau(error.reason, file=file, key=error.key) from None
+
+
+def read_document(path: str | os.PathLike[str]) -> dict[str, Any]:
+    """Read what a tableau file holds, as plain data whose keys and values are not checked yet.
+
+    Raises:
+        BadTableau: the file cannot be read, or is no TOML.
+    """
+    file = str(path)
+    try:
+        return _toml(_read(Path(path), file))
+    except BadTableau as error:
+        raise error if error.file else BadTableau(error.reason, file=file, key=error.key) from None
+
+
+def tableau_of(data: Mapping[str, Any], file: str) -> Tableau:
+    """Make a tableau of what a file holds; `file` is the name that errors give, and the tableau's origin."""
+    try:
         _check_keys(data)
         embedded, continuous = data.get("embedded", {}), data.get("continuous", {})
         return Tableau(
@@ -269,33 +298,4 @@ def write_tableau(tableau: Tableau, path: str | os.PathLike[str], overwrite: boo
         raise OutputFailed(str(place), f"is a folder; name the file: {place / tableau.slug}.toml")
     if place.name != f"{tableau.slug}.toml":
         raise BadTableau(f"a file of {tableau.slug!r} is named {tableau.slug}.toml", file=str(place))
-    if not overwrite and os.path.lexists(place):
-        raise OutputExists(str(place))
-    if not place.parent.is_dir():
-        raise OutputFailed(str(place), f"there is no folder {place.parent}; make it first")
-    beside = place.with_name(f".{place.name}.{secrets.token_hex(4)}.part")
-    try:
-        with beside.open("x", encoding="utf-8", newline="\n") as stream:
-            stream.write(format_tableau(tableau))
-            stream.flush()
-            os.fsync(stream.fileno())
-        _put(beside, place, overwrite)
-    except OSError as error:
-        if isinstance(error, OutputExists):
-            raise
-        raise OutputFailed(str(place), f"{_why(error)}; nothing was written") from error
-    finally:
-        beside.unlink(missing_ok=True)
-
-
-def _put(beside: Path, place: Path, overwrite: bool) -> None:
-    if overwrite:
-        beside.replace(place)
-        return
-    # A hard link is refused where the name is taken, so that a file which came meanwhile is never lost.
-    try:
-        place.hardlink_to(beside)
-    except FileExistsError:
-        raise OutputExists(str(place)) from None
-    except OSError:
-        beside.replace(place)  # this file system has no hard links
+    write_text(format_tableau(tableau), place, overwrite)
