@@ -33,7 +33,8 @@ def near_fraction(x: float) -> Fraction | None:
         raise BadNumber(repr(x), "a coefficient is finite")
     if abs(x) <= NOTHING:
         return Fraction(0)
-    found = _within(x, UNITS * ulp(x), LARGEST_DENOMINATOR)
+    # Half a unit more, as the float of the fraction itself is rounded.
+    found = _within(x, (UNITS + 0.5) * ulp(x), LARGEST_DENOMINATOR)
     return found if found is not None else _within(x, NOTHING, SMALL_DENOMINATOR)
 
 
