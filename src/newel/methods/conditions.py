@@ -193,12 +193,15 @@ class Conditions:
             if len(failures) >= most:
                 return failures[:most]
         # A condition that intervals disprove has decided this order; the rest is not worth exact arithmetic.
-        return failures or list(self._doubtful_failures(part, order, doubtful))[:most]
+        return failures or list(self._doubtful_failures(part, doubtful))[:most]
 
     def _doubtful_failures(
-        self, part: Part, order: int, doubtful: Sequence[tuple[int, Tree, Interval]]
+        self, part: Part, doubtful: Sequence[tuple[int, Tree, Interval]]
     ) -> Iterator[Failure]:
-        bounds = self._rounding_bounds(part, order) if doubtful else {}
+        # What the rounding of the weights alone explains needs no gradient of the matrix.
+        least = self._rounding_bounds(part, [tree for _, tree, _ in doubtful], gradients=False)
+        doubtful = [each for each in doubtful if each[2].magnitude > least.get((each[0], each[1].index), 0.0)]
+        bounds = self._rounding_bounds(part, [tree for _, tree, _ in doubtful])
         for which, tree, interval in doubtful:
             formula = part.formulas[which]
             bound = bounds.get((which, tree.index), 0.0)
@@ -210,18 +213,25 @@ class Conditions:
                     continue
             yield self._failure(part, formula, tree, float(interval), bound)
 
-    def _rounding_bounds(self, part: Part, order: int) -> dict[tuple[int, int], float]:
-        """Return the largest residual to accept, by formula and tree; without any rounding, none."""
+    def _rounding_bounds(
+        self, part: Part, some: Sequence[Tree], gradients: bool = True
+    ) -> dict[tuple[int, int], float]:
+        """Return the largest residual to accept, by formula and tree; without any rounding, none.
+
+        Without `gradients` the rounding of the weights alone is counted, which makes a bound too small.
+        """
         slacks = np.array([formula.slack for formula in part.formulas])
-        if not (self.rounded_matrix or slacks.any()):
+        if not some or not (self.rounded_matrix or slacks.any()):
             return {}
+        wanted = list(dict.fromkeys(some))
         weights = np.array([[float(x) for x in formula.weights] for formula in part.formulas])
         bounds = {}
         with np.errstate(all="ignore"):
-            for piece in self.sensitivities.in_pieces(trees(order), len(weights)):
-                by_weights = slacks @ np.abs(self.sensitivities.stage_vectors(piece)).T
-                gradients = np.abs(self.sensitivities.matrix_gradients(piece, weights))
-                total = by_weights + np.tensordot(gradients, self.slack, axes=2)
+            for piece in self.sensitivities.in_pieces(wanted, len(weights)):
+                total = slacks @ np.abs(self.sensitivities.stage_vectors(piece)).T
+                if gradients:
+                    found = np.abs(self.sensitivities.matrix_gradients(piece, weights))
+                    total = total + np.tensordot(found, self.slack, axes=2)
                 for which, row in enumerate(total.tolist()):
                     for tree, value in zip(piece, row, strict=True):
                         bounds[which, tree.index] = allowed(value)
