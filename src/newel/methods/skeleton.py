@@ -25,13 +25,15 @@ def _blanks(blank: Tableau, order: int, embedded: int | None) -> Iterator[str]:
     yield "# Fill in each ?, then: newel check " + f"{blank.slug}.toml"
     yield "# Weights that you do not have can stay ?: newel draft " + f"{blank.slug}.toml --complete"
     yield 'schema = "newel-tableau/1"'
-    yield f"slug = {quoted(blank.slug)}                # the file's name without .toml"
-    yield f"name = {quoted(blank.name)}                # the usual name, one line"
-    yield 'authors = []                # such as ["A. Author", "B. Author"]'
-    yield "# year = 1901               # when it was published"
-    yield 'source = ""                 # where the numbers stand, as a citation'
-    yield 'numbers = "published"       # or "derived", or "from memory"'
-    yield f"order = {order}                   # the order that weights claim"
+    yield from _explained(
+        (f"slug = {quoted(blank.slug)}", "the file's name without .toml"),
+        (f"name = {quoted(blank.name)}", "the usual name, one line"),
+        ("authors = []", 'such as ["A. Author", "B. Author"]'),
+        ("# year = 1901", "when it was published"),
+        ('source = ""', "where the numbers stand, as a citation"),
+        ('numbers = "published"', 'or "derived", or "from memory"'),
+        (f"order = {order}", "the order that weights claim"),
+    )
     yield '# Numbers are texts: "1/3", "-0.25", "(5 - sqrt(5))/10". Rounded decimals need the line digits:'
     yield "# digits = 16               # significant digits that are to be trusted"
     yield "# c: leave nodes out where the source prints none; they find misprints."
@@ -45,6 +47,11 @@ def _blanks(blank: Tableau, order: int, embedded: int | None) -> Iterator[str]:
         yield from (f"order = {embedded}", f"weights = {_marks(s)}")
     yield from ("", "# Sentences for those who choose a method.", "[notes]")
     yield from ("strengths = []", "weaknesses = []", "known_failures = []", "remarks = []")
+
+
+def _explained(*lines: tuple[str, str]) -> Iterator[str]:
+    width = max(len(line) for line, _ in lines) + 2
+    yield from (f"{line.ljust(width)}# {words}" for line, words in lines)
 
 
 def _marks(count: int, first: str = "?") -> str:
