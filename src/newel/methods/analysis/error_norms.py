@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from fractions import Fraction
 from functools import lru_cache
 from math import isqrt
@@ -10,7 +11,7 @@ from operator import mul
 from newel.methods.tableau import Row, Tableau
 from newel.methods.trees import trees, trees_up_to
 
-__all__ = ["HIGHEST", "error_norm", "error_terms", "largest_error_term"]
+__all__ = ["HIGHEST", "error_norm", "error_terms", "largest_error_term", "norm_of"]
 
 HIGHEST = 13
 """The highest order of trees that is summed over: 12,486 trees, some seconds at most."""
@@ -40,13 +41,28 @@ def error_terms(tableau: Tableau, order: int, embedded: bool = False) -> list[Fr
     weights = tableau.embedded_weights if embedded else tableau.weights
     if weights is None or order > HIGHEST:
         return None
-    stages = _stage_vectors(tableau.matrix, order)
+    return [Fraction(x, 1 << 2 * _BITS) for x in _scaled_terms(tableau.matrix, weights, order)]
+
+
+@lru_cache(maxsize=8)
+def _scaled_terms(matrix: tuple[Row, ...], weights: Row, order: int) -> tuple[int, ...]:
+    """Return the error coefficients in units of 2^−(2·bits); integers, as fractions cancel all the time."""
+    stages = _stage_vectors(matrix, order)
     b = [x.scaled_floor(_BITS) for x in weights]
-    terms = []
-    for tree in trees(order):
-        weight = Fraction(sum(map(mul, b, stages[tree.index])), 1 << 2 * _BITS)
-        terms.append((weight - Fraction(1, tree.density)) / tree.symmetry)
-    return terms
+    one = 1 << 2 * _BITS
+    return tuple(
+        (sum(map(mul, b, stages[tree.index])) - one // tree.density) // tree.symmetry for tree in trees(order)
+    )
+
+
+def norm_of(terms: Iterable[Fraction]) -> float:
+    """Return the root of the sum of squares of numbers, right to float64 where it is above 10⁻¹⁰⁰.
+
+    >>> norm_of([Fraction(3), Fraction(-4)])
+    5.0
+    """
+    scaled = ((x.numerator << _BITS) // x.denominator for x in terms)
+    return float(Fraction(isqrt(sum(x * x for x in scaled)), 1 << _BITS))
 
 
 @lru_cache(maxsize=2)
@@ -85,9 +101,7 @@ def error_norm(tableau: Tableau, order: int | None = None, embedded: bool = Fals
     terms = error_terms(tableau, _asked(tableau, order, embedded), embedded)
     if terms is None:
         return None
-    total = sum(term * term for term in terms)
-    scaled = (total.numerator << 2 * _BITS) // total.denominator if total else 0
-    return float(Fraction(isqrt(scaled), 1 << _BITS))
+    return norm_of(terms)
 
 
 def largest_error_term(tableau: Tableau, order: int | None = None, embedded: bool = False) -> float | None:

@@ -4,14 +4,11 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from fractions import Fraction
-from math import isqrt
 
-from newel.methods.analysis.error_norms import HIGHEST, error_terms
+from newel.methods.analysis.error_norms import HIGHEST, error_terms, norm_of
 from newel.methods.tableau import Tableau
 
 __all__ = ["embedded_error_ratio", "estimate_error_ratio", "solution_error_ratio"]
-
-_BITS = 256
 
 
 def embedded_error_ratio(tableau: Tableau) -> float | None:
@@ -88,8 +85,5 @@ def _lower_order(tableau: Tableau) -> int | None:
 def _ratio(above: Sequence[Fraction] | None, below: Sequence[Fraction] | None) -> float | None:
     if above is None or below is None:
         return None
-    square = sum((x * x for x in below), Fraction(0))
-    if square < Fraction(1, 10**24):  # nothing to divide by: the order is higher than claimed
-        return None
-    quotient = sum((x * x for x in above), Fraction(0)) / square
-    return float(Fraction(isqrt((quotient.numerator << 2 * _BITS) // quotient.denominator), 1 << _BITS))
+    size = norm_of(below)
+    return None if size < 1e-12 else norm_of(above) / size  # else the order is higher than claimed
