@@ -13,6 +13,7 @@ from hypothesis import strategies as st
 from newel.catalogue.shipped import tableau_files
 from newel.methods import conditions, order_conditions, residues
 from newel.methods.exact import Exact
+from newel.methods.families.composition import richardson
 from newel.methods.families.extrapolation import extrapolated_euler, extrapolated_midpoint
 from newel.methods.float_views import largest_float_residual
 from newel.methods.order_conditions import prove
@@ -163,3 +164,10 @@ def test_a_claim_of_order_12_that_is_too_high_fails_by_the_conditions_of_order_1
     verdict = prove(wrong)
     assert (verdict.outcome, verdict.order) == ("fails", 10)
     assert all(" of order 11 " in f.message for f in verdict.failures if f.part == "weights")
+
+
+def test_tiny_coefficients_of_rounded_numbers_are_no_high_linear_order() -> None:
+    """1/15! is below 1e-12: a coefficient far from it is not taken for it, whatever the stages."""
+    method = parse_tableau(tableau_files()["prince-dormand-8-7"].read_text(encoding="utf-8"))
+    said = [remark for remark in prove(richardson(2, method)).remarks if "on linear problems" in remark]
+    assert said == []

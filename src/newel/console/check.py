@@ -23,6 +23,9 @@ if TYPE_CHECKING:
 __all__ = ["PASTE", "WHAT", "add", "draw", "draw_details", "run"]
 
 WHAT = "Prove what methods claim; show what fails, and the nearest repair."
+MOST_SHOWN = 20
+"""How many coefficients that no condition sees are named one by one."""
+
 PASTE = ("newel check kutta-4", "newel check --all")
 
 
@@ -197,7 +200,9 @@ def draw_details(screen: Screen, verdict: Verdict) -> None:
         screen.draw(filled(line, width, "  ? ", "    "))
     remarks = [*verdict.remarks]
     if verdict.undetermined:
-        remarks.append(f"not determined by the claimed orders: {', '.join(verdict.undetermined)}")
+        shown, more = verdict.undetermined[:MOST_SHOWN], len(verdict.undetermined) - MOST_SHOWN
+        rest = f" and {more} more (all of them: --json)" if more > 0 else ""
+        remarks.append(f"not determined by the claimed orders: {', '.join(shown)}{rest}")
     for line in remarks:
         screen.draw(filled(line, width, "  - ", "    "))
 

@@ -22,6 +22,9 @@ if TYPE_CHECKING:
 
 __all__ = ["remarks", "undetermined"]
 
+NEAR = Fraction(1, 1000)
+"""How near a coefficient of rounded numbers must come to 1/k! to count as it, where 1/k! is tiny."""
+
 
 def remarks(
     coefficients: Coefficients, conditions: Conditions, parts: Sequence[Part], orders: Sequence[int]
@@ -81,8 +84,10 @@ def _on_linear_order(part: Part, order: int, conditions: Conditions, rounded: bo
     vector = arithmetic.vector(part.formulas[0].weights)
     stages, linear = arithmetic.ones(), 0
     while linear <= len(conditions.matrix):
-        residual = arithmetic.residual(vector, stages, Fraction(1, factorial(linear + 1)))
-        if not _is_zero(residual, rounded):
+        wanted = Fraction(1, factorial(linear + 1))
+        residual = arithmetic.residual(vector, stages, wanted)
+        # From some k on 1/k! itself is below any fixed bound: what counts there is the share of it.
+        if not _is_zero(residual, rounded) or (rounded and residual.magnitude > wanted * NEAR):
             break
         linear, stages = linear + 1, arithmetic.apply(stages)
     if linear > order:
