@@ -31,6 +31,7 @@ if TYPE_CHECKING:
     from newel.marching.one_step import one_step as one_step
     from newel.marching.stepper import Stepper as Stepper
     from newel.methods.drafting import draft as draft
+    from newel.methods.storage import Storage as Storage
     from newel.methods.tableau import Notes as Notes
     from newel.methods.tableau import Tableau as Tableau
     from newel.methods.tableau_file import write_tableau as write_tableau
@@ -64,6 +65,7 @@ _WHERE = {
     "Run": "newel.results.run",
     "StateEvent": "newel.models.events",
     "Stepper": "newel.marching.stepper",
+    "Storage": "newel.methods.storage",
     "Tableau": "newel.methods.tableau",
     "check": "newel.catalogue.checking",
     "draft": "newel.methods.drafting",
