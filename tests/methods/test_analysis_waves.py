@@ -31,8 +31,6 @@ def test_the_exponential_series_leaves_the_next_terms(order: int) -> None:
     t = chain(*SERIES[: order - 1], order=order)
     first = -Fraction(1, factorial(order + 1))
     second = Fraction(1, factorial(order + 1)) - Fraction(1, factorial(order + 2))
-    if order == 1:
-        second += 0  # (z²/2)² only enters from z⁴ on
     even, odd = (first, second) if order % 2 else (second, first)
     lower, upper = order, order + 1
     even_power, odd_power = (lower + 1, upper + 1) if order % 2 else (upper + 1, lower + 1)

@@ -93,10 +93,6 @@ def test_svg_is_xml_with_a_dashed_path_and_a_name_for_each_method() -> None:
             assert 0 <= float(y) <= height
 
 
-def test_names_of_a_users_own_are_escaped_in_svg() -> None:
-    ElementTree.fromstring(stability_region(EULER).svg())
-
-
 def test_the_json_twin_has_window_and_outlines() -> None:
     data = stability_region("kutta-4").to_data()
     assert data["bottom"] == -data["top"]
