@@ -25,6 +25,8 @@ from tests.independent.quadratic import Number, Quadratic, denominator, is_zero,
 from tests.independent.tree_formulas import NestedTree, density, rooted_trees, size
 
 CAP = 1e-12
+KEPT = 9
+"""Slopes are kept of trees with so many nodes at most: of larger ones they would fill the memory."""
 
 
 @dataclass(frozen=True)
@@ -99,19 +101,21 @@ class Derivatives:
 
     def of(self, tree: NestedTree) -> tuple[Any, Any]:
         """Phi(tree), shape (s,), and its derivative, shape (s, s, s): stage, row, column."""
-        if tree not in self.known:
-            s = self.stages
-            value, slope = np.ones(s), np.zeros((s, s, s))
-            for branch in tree:
-                inner, inner_slope = self.of(branch)
-                factor = self.matrix @ inner
-                factor_slope = (self.matrix @ inner_slope.reshape(s, s * s)).reshape(s, s, s)
-                for stage in range(s):
-                    factor_slope[stage, stage] += inner
-                slope = slope * factor[:, None, None] + value[:, None, None] * factor_slope
-                value = value * factor
+        if tree in self.known:
+            return self.known[tree]
+        s = self.stages
+        value, slope = np.ones(s), np.zeros((s, s, s))
+        for branch in tree:
+            inner, inner_slope = self.of(branch)
+            factor = self.matrix @ inner
+            factor_slope = (self.matrix @ inner_slope.reshape(s, s * s)).reshape(s, s, s)
+            for stage in range(s):
+                factor_slope[stage, stage] += inner
+            slope = slope * factor[:, None, None] + value[:, None, None] * factor_slope
+            value = value * factor
+        if size(tree) <= KEPT:
             self.known[tree] = value, slope
-        return self.known[tree]
+        return value, slope
 
 
 @dataclass(frozen=True)

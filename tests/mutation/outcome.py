@@ -12,7 +12,16 @@ from typing import Any
 from newel.methods.order_conditions import PROOF_VERSION, proof_key
 from tests.independent.judging import unseen
 from tests.mutation.moves import COMPENSATED, HALF_UNIT, SINGLE
-from tests.mutation.trials import Trial, all_moves, as_tableau, files, verdict_of, workshop
+from tests.mutation.trials import (
+    MANY_STAGES,
+    MOST_MOVES,
+    Trial,
+    all_moves,
+    as_tableau,
+    files,
+    verdict_of,
+    workshop,
+)
 
 HERE = Path(__file__).with_name("outcome.json")
 SCHEMA = "newel-mutation/1"
@@ -112,7 +121,7 @@ def write_outcome(methods: Mapping[str, Any]) -> dict[str, int]:
         "schema": SCHEMA,
         "written_by": "python -m tests.mutation",
         "proof_version": PROOF_VERSION,
-        "sampled": "nothing: every move on every built-in method was tried",
+        "sampled": f"up to {MANY_STAGES} stages every move was tried, above that {MOST_MOVES} of a method",
         "totals": totals,
         "methods": dict(sorted(methods.items())),
     }

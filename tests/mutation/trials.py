@@ -18,6 +18,9 @@ from tests.mutation.mutants import Mutant, Workshop
 TABLEAUX = Path(__file__).parents[2] / "tableaux"
 SECOND_OPINION_EVERY = 64
 """One in so many rejected mutants, drawn by digest, is judged independently too."""
+MANY_STAGES = 20
+MOST_MOVES = 100
+"""Of methods with more than `MANY_STAGES` stages so many moves are tried, drawn by digest."""
 
 exactly = lru_cache(maxsize=100_000)(Exact.of)
 
@@ -61,8 +64,12 @@ def workshop(file: Path) -> Workshop:
 
 @lru_cache(maxsize=8)
 def all_moves(file: Path) -> tuple[Move, ...]:
-    """Every move on a file."""
-    return tuple(moves(workshop(file).document))
+    """Every move on a file; with more than `MANY_STAGES` stages, a fixed draw of `MOST_MOVES` of them."""
+    document = workshop(file).document
+    found = tuple(moves(document))
+    if document.stages <= MANY_STAGES:
+        return found
+    return tuple(sorted(sorted(found, key=lambda move: move.draw)[:MOST_MOVES], key=found.index))
 
 
 def drawn(file: Path, one_in: int) -> list[Move]:

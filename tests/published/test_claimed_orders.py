@@ -21,6 +21,9 @@ FILES = sorted(TABLEAUX.glob("order-*/*.toml"), key=lambda path: path.stem)
 EXACT, ROUNDED = 1e-40, 1e-12
 """A residual counts as zero up to these: for files without, and with, a stated number of trusted digits."""
 
+MOST_NODES = 11
+"""Trees have at most so many nodes here; `python -m tests.independent.tree_formulas` looks at all of them."""
+
 HIGHER_THAN_CLAIMED: dict[str, str] = {}
 """Slugs of methods whose true order is above the published claim, each with the reason."""
 
@@ -81,13 +84,15 @@ CLAIMS: dict[str, tuple[int, int | None, str]] = {
 @pytest.mark.parametrize("path", FILES, ids=lambda path: path.stem)
 def test_each_weight_vector_attains_its_claimed_order_and_no_higher(path: Path) -> None:
     data = load(path)
-    report = orders(data, tolerance=EXACT if data["digits"] is None else ROUNDED)
+    looked_at = None if data["order"] < MOST_NODES else MOST_NODES
+    report = orders(data, up_to=looked_at, tolerance=EXACT if data["digits"] is None else ROUNDED)
     assert report.row_sums <= report.tolerance
     for part in (report.weights, report.embedded, report.continuous):
         if part is None:
             continue
         higher = path.stem in HIGHER_THAN_CLAIMED and part is report.weights
-        assert part.order == part.claimed + higher, {order: float(r) for order, r in part.residuals.items()}
+        expected = part.claimed + higher if looked_at is None else min(part.claimed, looked_at)
+        assert part.order == expected, {order: float(r) for order, r in part.residuals.items()}
 
 
 @pytest.mark.parametrize("path", FILES, ids=lambda path: path.stem)

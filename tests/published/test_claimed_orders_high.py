@@ -24,7 +24,7 @@ from tests.independent import tree_formulas as formulas
 from tests.published.claims_more import MORE_CLAIMS
 
 TABLEAUX = Path(__file__).parents[2] / "tableaux"
-FOLDERS = ("order-5", "order-6", "order-7", "order-8", "order-9", "order-10")
+FOLDERS = tuple(f"order-{order}" for order in range(5, 17))
 
 
 class Claim(NamedTuple):
