@@ -1,0 +1,1 @@
+"""Printed coefficients brought to many digits, by solving the order conditions."""
