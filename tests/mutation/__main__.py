@@ -1,6 +1,6 @@
 """Try every change on every built-in method: `python -m tests.mutation [--stale] [--workers N]`.
 
-Of methods with more than 20 stages a fixed draw of 100 changes is tried.
+Of methods with more than 16 stages a fixed draw of 100 changes is tried.
 
 Writes `outcome.json` beside this file: by method the digests that it was made from, counts, every change that
 the proof accepts with the reason why it is right to do so, and every half unit that it does not accept.

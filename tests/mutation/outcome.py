@@ -26,7 +26,7 @@ from tests.mutation.trials import (
 HERE = Path(__file__).with_name("outcome.json")
 SCHEMA = "newel-mutation/1"
 MOST_UNITS = 1000
-"""The largest least change that a single coefficient may need to show, in units of its last trusted digit."""
+"""A least change that shows is large above this, in units of the last trusted digit."""
 
 
 def made_from(slug: str) -> dict[str, str]:

@@ -18,7 +18,7 @@ from tests.mutation.mutants import Mutant, Workshop
 TABLEAUX = Path(__file__).parents[2] / "tableaux"
 SECOND_OPINION_EVERY = 64
 """One in so many rejected mutants, drawn by digest, is judged independently too."""
-MANY_STAGES = 20
+MANY_STAGES = 16
 MOST_MOVES = 100
 """Of methods with more than `MANY_STAGES` stages so many moves are tried, drawn by digest."""
 
