@@ -23,6 +23,7 @@ FEWEST_SPACINGS = 4.0
 # Measured and common practice: a stage that is no number, or a state outside its limits, quarters the step.
 _QUARTER, _MOST_QUARTERINGS = 0.25, 10
 _STRETCH = 1.01
+_INFINITY = math.inf
 
 
 def adaptive_step(loop: Loop, landing: float | None) -> tuple[float, float]:
@@ -56,7 +57,7 @@ def adaptive_step(loop: Loop, landing: float | None) -> tuple[float, float]:
         h = ahead - time
         step.attempt(time, h, loop.ceiling(ahead) if lands or loop.reach > 1 else None)
         error = step.error_norm(rel_tol, ratio, norm)
-        if not error < math.inf or (loop.has_within and not loop.inside(ahead, step.new)):
+        if not error < _INFINITY or (loop.has_within and not loop.inside(ahead, step.new)):
             quarterings += 1
             loop.rejected += 1
             log.debug("rejected at t = %r: step %r, not finite or not within", time, length)
@@ -65,7 +66,7 @@ def adaptive_step(loop: Loop, landing: float | None) -> tuple[float, float]:
             loop.next_step = length * _QUARTER
             continue
         accepted, factor, memory = controller.decide(error, length, loop.order, loop.memory)
-        if not 0.0 < factor < (math.inf if accepted else 1.0):
+        if not 0.0 < factor < (_INFINITY if accepted else 1.0):
             raise _bad_factor(loop, accepted, factor)
         if accepted:
             break

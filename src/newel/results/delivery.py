@@ -62,6 +62,7 @@ class Delivery:
         asking = [pick for pick in self._picks if pick is not None]
         self._landing = [pick for pick in asking if pick.next_after(self._line.start) is not None]
         self._every, self._thinned = self._feeds()
+        self._lone = self._every[0].take if len(self._every) == 1 and not self._thinned else None
         self._open = False
         self.last_time: float | None = None
 
@@ -98,6 +99,15 @@ class Delivery:
             MemoryFull: when this row, which is kept, was the last that a memory sink takes.
             OutputFailed: when a sink failed; the others have the row.
         """
+        if self._lone is not None and not last:
+            # The usual case, one feed that takes every row: nothing has to be caught for another's sake.
+            try:
+                self._lone(t, y, event)
+            except Exception:
+                self.last_time = t
+                raise
+            self.last_time = t
+            return
         error: Exception | None = None
         for feed in self._every:
             try:

@@ -139,6 +139,7 @@ class NumpyStep:
 
         self.slab = np.zeros((s + 1, size), dtype=dtype)
         self.stage, self.new_flat = np.zeros(size, dtype=dtype), np.zeros(size, dtype=dtype)
+        self.slab_first, self.rate_first, self.rate_last = self.slab[0], self.slab[1], self.slab[s]
         self.state = _read_only(self.slab[0], shape)
         self.new = _read_only(self.new_flat, shape)
         self.rows = [self.slab[i].reshape(shape) for i in range(s + 1)]
@@ -176,6 +177,7 @@ class NumpyStep:
         self.error_dot, self.error_rates = self.work[self.stages + 1, 1:].dot, self.slab[1:]
         self.size_before, self.size_after = np.zeros(size, dtype=real), np.zeros(size, dtype=real)
         self.one_piece = len(self.cuts) == 1 and dtype.kind != "c"
+        self.square, self.finiteness = self.quotient.dot, self.scale.dot
 
     def load(self, state: Array) -> None:
         """Start anew from this state, shape and dtype as at first; the rate at it is not known yet."""
@@ -307,10 +309,10 @@ class NumpyStep:
         _maximum(self.size_before, after, out=scale)
         _add(scale, ratio, scale)
         _divide(self.stage, scale, quotient)
-        if scale.dot(self.real_zeros) != 0.0:
+        if self.finiteness(self.real_zeros) != 0.0:
             # An infinite scale would make any error small.
             return math.nan
-        return math.sqrt(quotient.dot(quotient) / self.count) / rel_tol
+        return math.sqrt(self.square(quotient) / self.count) / rel_tol
 
     def _square_in_pieces(self, ratio: Array) -> float:
         """The sum of squares of error over scale, piece by piece, by moduli where they are complex."""
@@ -346,7 +348,7 @@ class NumpyStep:
 
     def accept(self) -> None:
         """Make the new state the state; keep the rate at it where the last stage is the next first."""
-        self.slab[0] = self.new_flat
+        self.slab_first[...] = self.new_flat
         self.floor = None
         if self.has_estimate:
             # The sizes of the new state are known where its error was asked for.
@@ -355,6 +357,6 @@ class NumpyStep:
         if self.compensated:
             self.carry, self.next_carry = self.next_carry, self.carry
         if self.first_same_as_last:
-            self.slab[1] = self.slab[self.stages]
+            self.rate_first[...] = self.rate_last
         else:
             self.fresh = False
