@@ -63,7 +63,7 @@ def _by_stages(tableau: Tableau, width: int) -> Iterator[str]:
     """Yield each stage with its node and the entries that are not zero, by their number."""
     yield "  Entries that are not listed are 0."
     for i, (node, row) in enumerate(zip(tableau.nodes, tableau.matrix, strict=True), 1):
-        yield f"  stage {i}   c = {node}"
+        yield from _cut(f"  stage {i}   c = {node}", width)
         yield from _entries(row, width)
     yield f"  weights, order {tableau.order}"
     yield from _entries(tableau.weights, width)
@@ -74,7 +74,19 @@ def _by_stages(tableau: Tableau, width: int) -> Iterator[str]:
 
 def _entries(row: Sequence[Exact], width: int) -> Iterator[str]:
     texts = [f"{j:>2}: {x}" for j, x in enumerate(row, 1) if x]
-    yield from in_columns(texts, width, "    ")
+    for line in in_columns(texts, width, "    "):
+        yield from _cut(line, width)
+
+
+def _cut(line: str, width: int) -> Iterator[str]:
+    """Break a number that is longer than a line, before its denominator where that helps, else anywhere."""
+    indent = " " * 8
+    while len(line) > width:
+        slash = line.rfind("/", len(indent) + 1, width)
+        at = slash if slash > 0 else width
+        yield line[:at]
+        line = indent + line[at:]
+    yield line
 
 
 def _continuous(tableau: Tableau, width: int) -> Iterator[str]:
