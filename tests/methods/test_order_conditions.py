@@ -608,3 +608,24 @@ def test_progress_does_not_pass_the_total_when_a_method_is_better_than_claimed()
     calls: list[tuple[int, int]] = []
     prove(kutta(order=1), lambda done, total: calls.append((done, total)))
     assert calls == [(1, 1)]
+
+
+def test_too_few_trusted_digits_are_told_with_the_number_needed() -> None:
+    """Where all that fails is rounding, the verdict says how many digits would do; of a slip it does not."""
+
+    def third_order(last_weight: str, digits: int) -> Tableau:
+        return Tableau(
+            "short",
+            order=3,
+            matrix=[[], ["0.33333333"], [0, "0.66666667"]],
+            weights=["0.25", 0, last_weight],
+            digits=digits,
+        )
+
+    short = prove(third_order("0.75", 8))
+    assert not short
+    assert short.remarks[0].startswith("8 trusted digits leave conditions off by up to 3e-09")
+    assert short.remarks[0].endswith("about 12 digits are needed")
+    wrong = prove(third_order("0.73", 8))
+    assert not wrong
+    assert not any("digits are needed" in remark for remark in wrong.remarks)

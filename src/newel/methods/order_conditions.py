@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+import math
 from collections.abc import Callable, Iterator, Mapping
 from fractions import Fraction
 from typing import TYPE_CHECKING, Any, Literal
@@ -17,7 +18,7 @@ from typing import TYPE_CHECKING, Any, Literal
 import attrs
 
 from newel.methods.coefficients import Coefficients
-from newel.methods.conditions import HANDFUL, MANY_TREES, Conditions, Part, allowed, readable
+from newel.methods.conditions import HANDFUL, LIMIT, MANY_TREES, Conditions, Part, allowed, readable
 from newel.methods.elementary_weights import ElementaryWeights, FixedPoint
 from newel.methods.exact import Exact
 from newel.methods.float_views import largest_float_residual
@@ -61,10 +62,32 @@ def prove(tableau: Tableau, progress: Progress | None = None) -> Verdict:
     differing = tuple(storage_failures(tableau))
     if differing:
         return attrs.evolve(verdict, outcome="fails", failures=(*verdict.failures, *differing[:HANDFUL]))
+    short = _too_few_digits(verdict)
+    if short:
+        verdict = attrs.evolve(verdict, remarks=(short, *verdict.remarks))
     rounded_form = tableau.storage is not None and tableau.storage.digits is not None
     if verdict.outcome == "exact" and rounded_form:
         return attrs.evolve(verdict, outcome="rounded", digits=_least_digits(tableau))
     return verdict
+
+
+def _too_few_digits(verdict: Verdict) -> str:
+    """Say how many digits would do, where what fails is no more than the rounding of the stated ones.
+
+    A residual shrinks tenfold with each digit; one above a thousand units of the last digit is no rounding.
+    """
+    residuals = [abs(f.residual) for f in verdict.failures if f.part != "claim" and f.bound == LIMIT]
+    conditions = sum(f.part != "claim" for f in verdict.failures)
+    if verdict.digits is None or not residuals or len(residuals) < conditions:
+        return ""
+    worst = max(residuals)
+    if not LIMIT < worst <= 10.0 ** (3 - verdict.digits):
+        return ""
+    needed = verdict.digits + math.ceil(math.log10(worst / LIMIT))
+    return (
+        f"{verdict.digits} trusted digits leave conditions off by up to {worst:.1g}, and {LIMIT:g} is the "
+        f"limit: about {needed} digits are needed"
+    )
 
 
 def prove_coefficients(
