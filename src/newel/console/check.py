@@ -10,7 +10,7 @@ import attrs
 
 from newel.console.lookup import method_name, proof_progress, registry_of
 from newel.console.screen import Screen
-from newel.console.words import OUTCOME_STYLES, claims, count, filled, orders
+from newel.console.words import OUTCOME_STYLES, claims, count, filled, float_floor, orders
 from newel.errors import BadRequest, BadTableau, NewelError, SlugTaken
 
 if TYPE_CHECKING:
@@ -146,7 +146,7 @@ def draw(screen: Screen, checked: Sequence[_Checked]) -> None:
     if len(checked) == 1:
         for slug, verdict in proved:
             digits = "" if verdict.digits is None else f", {verdict.digits} digits are trusted"
-            said = f"order {claims(verdict)}{digits}, in float64 to {verdict.working_floor:.1e}"
+            said = f"order {claims(verdict)}{digits}{float_floor(verdict, ',')}"
             outcome = (verdict.outcome, OUTCOME_STYLES[verdict.outcome])
             screen.draw(Text.assemble((slug, "bold"), "\n  ", outcome, ": ", said))
             draw_details(screen, verdict)
@@ -180,7 +180,7 @@ def _table(proved: Sequence[tuple[str, Verdict]]) -> Table:
             Text(verdict.outcome, style=OUTCOME_STYLES[verdict.outcome]),
             orders(verdict.order, verdict.embedded_order),
             "" if verdict.continuous_order is None else str(verdict.continuous_order),
-            f"{verdict.working_floor:.1e}",
+            f"{verdict.working_floor:.1e}" if verdict else "",
             "" if verdict.digits is None else str(verdict.digits),
         )
     return table

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 from newel.console.lookup import method_name, proof_progress, registry_of
 from newel.console.screen import Screen
-from newel.console.words import OUTCOME_STYLES, claims, filled, value
+from newel.console.words import OUTCOME_STYLES, claims, filled, float_floor, value
 from newel.errors import BadRequest
 
 if TYPE_CHECKING:
@@ -173,6 +173,6 @@ def _draw_verdict(screen: Screen, found: Inspection) -> None:
         head = Text.assemble("\n  proof  ", ("unproven", OUTCOME_STYLES["unproven"]), ": taken on trust")
         screen.draw(head)
         return
-    said = f": order {claims(verdict)}; in float64 to {verdict.working_floor:.1e}"
+    said = f": order {claims(verdict)}{float_floor(verdict, ';')}"
     screen.draw(Text.assemble("\n  proof  ", (verdict.outcome, OUTCOME_STYLES[verdict.outcome]), said))
     draw_details(screen, verdict)

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from newel.methods.order_conditions import Verdict
 
-__all__ = ["OUTCOME_STYLES", "claims", "count", "filled", "in_columns", "orders", "value"]
+__all__ = ["OUTCOME_STYLES", "claims", "count", "filled", "float_floor", "in_columns", "orders", "value"]
 
 OUTCOME_STYLES = {"exact": "green", "rounded": "cyan", "fails": "bold red", "unproven": "yellow"}
 """Colours only repeat what the word says."""
@@ -30,6 +30,11 @@ def orders(order: int, embedded: int | None, continuous: int | None = None) -> s
 def claims(verdict: Verdict) -> str:
     """Return the proven orders of a verdict."""
     return orders(verdict.order, verdict.embedded_order, verdict.continuous_order)
+
+
+def float_floor(verdict: Verdict, separator: str) -> str:
+    """Return how well the float64 numbers keep the proven order; nothing where a claim fails."""
+    return f"{separator} in float64 to {verdict.working_floor:.1e}" if verdict else ""
 
 
 def filled(text: str, width: int, first: str, rest: str) -> str:
