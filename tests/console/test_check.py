@@ -24,7 +24,7 @@ def test_a_failure_names_tree_residual_and_claim_and_is_status_1(tmp_path):
     (tmp_path / "two-thirds-3.toml").write_text(own("two-thirds-3", order=3))
     said = say("check", "two-thirds-3.toml")
     assert said.status == 1
-    assert "two-thirds-3\n  fails: order 2," in said.out
+    assert "two-thirds-3\n  fails: order 2\n" in said.out
     assert "  ! weights: [[τ]] of order 3 should give 1/6 and is off by -1/6\n" in said.out
     assert "  ! weights: order 3 is claimed, order 2 is proved\n" in said.out
 

@@ -82,7 +82,7 @@ def test_a_method_that_fails_is_shown_with_what_fails_and_status_1(tmp_path):
     said = say("inspect", "two-thirds-2.toml")
     assert said.status == 1
     assert "  2/5 │ 2/5" in said.out
-    assert "  proof  fails: order 1;" in said.out
+    assert "  proof  fails: order 1\n" in said.out
     assert "  ! weights: [τ] of order 2 should give 1/2 and is off by -1/5" in said.out
     assert say("inspect", "two-thirds-2.toml", "--json").status == 1
 
