@@ -34,6 +34,11 @@ __all__ = [
 
 MOST_BYTES = 2 * 1024 * 1024
 
+# Reading an integer takes time that grows with the square of its digits, and other libraries lift Python's
+# own limit for the whole process.
+_LONG_INTEGER = re.compile(r"(?:^|[\s,\[=])[+-]?[0-9][0-9_]{4000,}", re.MULTILINE)
+_WRITE_TEXTS = 'an integer of thousands of digits; numbers are written as texts: "1/2"'
+
 _KNOWN = {
     "": (
         *("schema", "slug", "name", "also_called", "authors", "year", "source", "numbers"),
@@ -208,14 +213,16 @@ def _toml(text: str) -> dict[str, Any]:
     if len(text) > MOST_BYTES:
         raise BadTableau(f"{len(text):,} characters; a tableau file has at most {MOST_BYTES:,} bytes")
     text = text.removeprefix("\ufeff")
+    if _LONG_INTEGER.search(text):
+        raise BadTableau(_WRITE_TEXTS)
     try:
         return tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
         raise _misread(str(error), text) from None
     except RecursionError:
         raise BadTableau("brackets are nested too deeply to be read") from None
-    except ValueError:  # an integer beyond what Python reads
-        raise BadTableau('an integer of thousands of digits; numbers are written as texts: "1/2"') from None
+    except ValueError:  # an integer beyond what this Python was told to read
+        raise BadTableau(_WRITE_TEXTS) from None
 
 
 def _misread(message: str, text: str) -> BadTableau:
