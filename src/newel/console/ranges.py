@@ -124,8 +124,11 @@ def _value(name: str, text: str, option: str) -> Any:
         data = tomllib.loads(f"value = {text}")
     except (ValueError, RecursionError):
         data = {}
-    if list(data) == ["value"]:
-        return data["value"]
+    value = data.get("value")
+    # TOML's integers have 64 bits; how long ones are read depends on what else set Python's own limit.
+    beyond = isinstance(value, int) and not -(2**63) <= value < 2**63
+    if list(data) == ["value"] and not beyond:
+        return value
     shown = text if len(text) <= 60 else text[:57] + "…"
     lines = [
         f"{option} {name}={shown}: no value in TOML's grammar",
